@@ -20,12 +20,16 @@ class Fluid(Protocol):
     3. ``potential`` F is the integral of the stress over the rate from 0.
     4. ``complementary`` F* is the integral of the rate over the stress from 0, so
        F(rate) + F*(stress) >= rate * stress, with equality on the curve.
-    5. ``rate_slope`` is d(rate)/d(stress), 0 up to the yield stress.
-    6. ``exponent`` is d ln(stress)/d ln(rate) and lies in [0, ``exponent_bound``] everywhere.
+    5. ``rate_slope`` is d(rate)/d(stress): 0 up to a yield stress; at stress 0 of a fluid without
+       one it is the slope there, which a thickening power law has infinite.
+    6. ``local_exponent`` is d ln(stress)/d ln(rate) and lies in [0, ``exponent_bound``] everywhere.
+    7. ``power_index`` is the index of a fluid known to be a pure power law, None for any other.
+    8. NaN gives NaN, and nothing warns.
     """
 
     yield_stress: float
     exponent_bound: float
+    power_index: float | None
 
     def stress(self, rate: Array) -> Array:
         """Shear stress [Pa] at shear rate [1/s]."""
@@ -42,7 +46,7 @@ class Fluid(Protocol):
     def rate_slope(self, stress: Array) -> Array:
         """Slope of the inverse curve [1/(Pa s)] at shear stress [Pa]."""
 
-    def exponent(self, rate: Array) -> Array:
+    def local_exponent(self, rate: Array) -> Array:
         """Local exponent d ln(stress)/d ln(rate) [-] at shear rate [1/s]."""
 
     def tilted(self, tilt: float, index: float) -> Fluid:

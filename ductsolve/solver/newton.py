@@ -1,0 +1,167 @@
+"""Minimising the two energies: steps in the stress, where no fluid is singular."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from ductsolve.rheology.fluid import Fluid
+from ductsolve.solver.fields import Level, curl
+
+Array = np.ndarray
+
+MOST_STEPS = 60
+SUFFICIENT = 1e-4  # part of the predicted gain a step must bring (Armijo)
+SMALLEST_STEP = 2.0**-20
+TINY = 1e-200
+
+
+@dataclass(frozen=True)
+class Capped:
+    """The fluid with its apparent viscosity capped: the rate gains ``fluidity`` x stress.
+
+    ``fluidity`` [1/(Pa s)] is the only regularisation; brackets never use it.
+    """
+
+    fluid: Fluid
+    fluidity: float
+    picard: bool = False
+
+    def linearised(self, magnitude):
+        """Secant and tangent fluidity [1/(Pa s)] at a stress magnitude [Pa].
+
+        The tangent is what Newton's method needs; Picard's on the apparent viscosity takes the secant
+        for both.
+        """
+        magnitude = np.maximum(magnitude, TINY)
+        secant = self.fluid.rate(magnitude) / magnitude + self.fluidity
+        tangent = secant if self.picard else self.fluid.rate_slope(magnitude) + self.fluidity
+        return secant, tangent
+
+    def energy(self, magnitude):
+        """Complementary potential of the capped fluid [Pa/s]."""
+        return self.fluid.complementary(magnitude) + self.fluidity / 2 * magnitude**2
+
+
+def _tensor(along, across, direction):
+    """Symmetric tensor (11, 12, 22): ``along`` the direction, ``across`` it."""
+    change = along - across
+    x, y = direction
+    return across + change * x * x, change * x * y, across + change * y * y
+
+
+def _size(vector):
+    return np.sqrt(vector[0] ** 2 + vector[1] ** 2)
+
+
+def _line_search(energy, predicted):
+    """Largest of 1, 1/2, 1/4, ... with enough of the predicted gain, or 0; and the energy there."""
+    start = energy(0.0)
+    step = 1.0
+    while step >= SMALLEST_STEP:
+        value = energy(step)
+        if value <= start - SUFFICIENT * step * predicted:
+            return step, value
+        step /= 2
+    return 0.0, start
+
+
+def balance(level: Level) -> Array:
+    """Stress function (n_triangles, 6) of the Newtonian fluid: the start for every other."""
+    elements, system = level.elements, level.stress_system
+    one = np.ones_like(elements.weights)
+    known = level.stress(np.zeros((elements.count, 6)))
+    solve = system.factor(elements.stiffness((one, np.zeros_like(one), one)))
+    return system.spread(solve(-elements.load(curl_transposed(known))))
+
+
+def curl_transposed(vector):
+    """Vector v' with v . curl(f) = v' . grad(f)."""
+    return np.stack([-vector[1], vector[0]])
+
+
+def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop: float):
+    """Newton (or Picard) on the complementary energy E.
+
+    Ends after the step whose predicted gain is at most ``stop`` x E, or that finds nothing to gain.
+    Returns the stress function (n_triangles, 6) and the number of steps.
+    """
+    elements, system = level.elements, level.stress_system
+    stress = level.stress(psi)
+    for step in range(1, MOST_STEPS + 1):
+        size = _size(stress)
+        secant, tangent = capped.linearised(gradient * size)
+        direction = curl_transposed(stress / np.maximum(size, TINY))
+        solve = system.factor(elements.stiffness(_tensor(tangent, secant, direction)))
+        load = -elements.load(curl_transposed(secant * stress))
+        change = system.spread(solve(load))
+        predicted = gradient**2 * float(np.sum(load * change))
+        if not np.isfinite(predicted):
+            break
+        moved = curl(elements.gradient(change))
+
+        def energy(t, stress=stress, moved=moved):
+            return elements.integral(capped.energy(gradient * _size(stress + t * moved))).sum()
+
+        t, value = _line_search(energy, predicted)
+        psi, stress = psi + t * change, stress + t * moved
+        if predicted / 2 <= stop * value or t == 0:
+            break
+    return psi, step
+
+
+@dataclass(frozen=True, eq=False)
+class Velocity:
+    """A velocity and what was at hand when it was found.
+
+    Attributes
+    ----------
+    local : (n_triangles, 6) velocity [m/s]
+    stress : (2, n_triangles, n) stress at the points of assembly it was found with [Pa]
+    solve : function from local loads to the unknowns of the last linearised system
+    steps : linear systems solved
+    """
+
+    local: Array
+    stress: Array
+    solve: Callable[[Array], Array]
+    steps: int
+
+
+def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, stop: float) -> Velocity:
+    """Velocity that best belongs to the stress, by steps in the stress at the quadrature points.
+
+    A velocity is worth G int w - int F(|grad w|), its lower bound on the potential. Ends at the second
+    step that adds at most ``stop`` times the best worth; returns the best velocity met.
+    """
+    elements, system = level.elements, level.velocity_system
+    stress = gradient * level.stress(psi)
+    best, most, idle = np.zeros((elements.count, 6)), 0.0, 0
+    for step in range(1, MOST_STEPS + 1):
+        size = _size(stress)
+        secant, tangent = capped.linearised(size)
+        viscosity = _tensor(1 / tangent, 1 / secant, stress / np.maximum(size, TINY))
+        solve = system.factor(elements.stiffness(viscosity))
+        pull = stress * (1 - secant / tangent)  # the rate secant x stress lies along the stress
+        velocity = system.spread(solve(gradient * elements.unit_load - elements.load(pull)))
+        rate = elements.gradient(velocity)
+        spent = elements.integral(capped.fluid.potential(_size(rate))).sum()
+        worth = gradient * float(np.sum(elements.unit_load * velocity)) - spent
+        idle += worth - most <= stop * most
+        if worth > most:
+            best, most = velocity, worth
+        if idle == 2 or not np.isfinite(worth):
+            break
+        off = rate - secant * stress
+        moved = np.stack(
+            [viscosity[0] * off[0] + viscosity[1] * off[1], viscosity[1] * off[0] + viscosity[2] * off[1]]
+        )
+
+        def energy(t, stress=stress, moved=moved):
+            return elements.integral(capped.energy(_size(stress + t * moved))).sum()
+
+        predicted = -float(np.sum(elements.weights * secant * np.sum(stress * moved, axis=0)))
+        stress = stress + _line_search(energy, max(predicted, 0.0))[0] * moved
+    return Velocity(best, stress, solve, step)

@@ -1,0 +1,140 @@
+"""The one verb: a section, a fluid and a duty in, a duct flow with its bracket out."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+
+from ductsolve.errors import DutyError
+from ductsolve.mesh.sections import Section
+from ductsolve.rheology.fluid import Fluid
+from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
+from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
+from ductsolve.solver.levels import first_level, refine
+
+TRIANGLE_BUDGET = 60_000
+METHODS = ("newton", "picard")
+NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
+TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
+FEWEST_LEVELS = 2  # the best estimate of a power law looks back one level
+
+
+def solve(
+    section: Section,
+    fluid: Fluid,
+    *,
+    pressure_gradient: float | None = None,
+    flow_rate: float | None = None,
+    accuracy: float = 0.01,
+    method: str = "newton",
+    triangle_budget: int = TRIANGLE_BUDGET,
+    progress: Callable[[LevelRecord], None] | None = None,
+) -> DuctFlow:
+    """Fully developed laminar flow, to a guaranteed accuracy.
+
+    Refines the mesh until the relative half-width of the guaranteed bracket on the answer,
+    (high - low)/(high + low), is at most ``accuracy``.
+
+    Parameters
+    ----------
+    section, fluid : where and what
+    pressure_gradient : -dp/dz [Pa/m]; the flow rate is the answer
+    flow_rate : [m3/s]; the pressure gradient is the answer. Exactly one of the two is given
+    accuracy : relative half-width asked of the bracket
+    method : "newton", or "picard" on the apparent viscosity (slower, for comparison)
+    triangle_budget : refinement stops beyond this many triangles in the part that is solved
+    progress : called with the record of every level
+
+    Raises
+    ------
+    DutyError
+        when the duty is missing, doubled, not positive or not finite, or the accuracy out of range
+    """
+    _check(pressure_gradient, flow_rate, accuracy, method)
+    picard = method == "picard"
+    if pressure_gradient is not None:
+        duty = FlowRateWanted(section, fluid, float(pressure_gradient), accuracy, picard)
+    else:
+        duty = GradientWanted(section, fluid, float(flow_rate), accuracy, picard)
+    level, psi, history = first_level(section), None, []
+    while True:
+        last = len(level.mesh.triangles) * TYPICAL_GROWTH > triangle_budget
+        answer = duty.answer(level, psi, final=last)
+        history.append(_record(answer))
+        if progress:
+            progress(history[-1])
+        if _reached(answer, accuracy, len(history)):
+            return _flow(duty, answer, Status.ANSWERED, history)
+        if last:
+            return _flow(duty, answer, Status.BUDGET, history)
+        level, psi = refine(answer.iterate)
+
+
+def _reached(answer: Answer, accuracy: float, levels: int) -> bool:
+    """Whether the bracket is narrow enough, with a level before it to extrapolate from."""
+    width = answer.half_width
+    if width is None or width > accuracy:
+        return False
+    return levels >= FEWEST_LEVELS or width < accuracy / 10
+
+
+def _record(answer: Answer) -> LevelRecord:
+    iterate = answer.iterate
+    return LevelRecord(
+        triangles=len(iterate.level.mesh.triangles),
+        stress_steps=iterate.stress_steps,
+        velocity_steps=iterate.velocity.steps,
+        gap=iterate.bracket.width / max(iterate.bracket.high, 1e-300),
+        half_width=answer.half_width,
+    )
+
+
+def _flow(duty, answer: Answer, status: Status, history) -> DuctFlow:
+    """The answer for the whole section, its fields scaled to the flow rate reported."""
+    iterate = answer.iterate
+    if isinstance(duty, FlowRateWanted):
+        gradient, rate = duty.gradient, answer.estimate
+        gradients, rates = (gradient, gradient), answer.bracket
+    else:
+        gradient, rate = answer.estimate, duty.flow_rate
+        gradients, rates = answer.bracket, (rate, rate)
+    computed = duty.copies * iterate.flow
+    return DuctFlow(
+        section=duty.section,
+        fluid=duty.fluid,
+        pressure_gradient=gradient,
+        flow_rate=rate,
+        pressure_gradient_bracket=gradients,
+        flow_rate_bracket=rates,
+        estimated_error=answer.error,
+        accuracy=duty.accuracy,
+        status=status,
+        history=tuple(history),
+        level=iterate.level,
+        psi=iterate.psi,
+        velocity_field=iterate.velocity.local * (rate / computed if computed > 0 else 0.0),
+        solved_gradient=iterate.gradient,
+        gap=duty.copies * iterate.bracket.width,
+    )
+
+
+def _check(pressure_gradient, flow_rate, accuracy, method):
+    """Refuse a duty that cannot be answered."""
+    given = {"pressure_gradient": pressure_gradient, "flow_rate": flow_rate}
+    given = {name: value for name, value in given.items() if value is not None}
+    if len(given) != 1:
+        found = "both" if given else "neither"
+        raise DutyError(f"give exactly one of pressure_gradient and flow_rate; found {found}")
+    for name, value in given.items():
+        if not _is_number(value) or value <= 0:
+            raise DutyError(f"{name} must be a positive finite number in SI units, found {value!r}")
+    if not _is_number(accuracy) or not NARROWEST <= accuracy < 1:
+        raise DutyError(f"accuracy must lie between {NARROWEST:g} and 1 (0.01 is 1 %), found {accuracy!r}")
+    if method not in METHODS:
+        raise DutyError(f"method must be one of {', '.join(METHODS)}, found {method!r}")
+
+
+def _is_number(value) -> bool:
+    return isinstance(value, int | float | np.number) and not isinstance(value, bool) and math.isfinite(value)
