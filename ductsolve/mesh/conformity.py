@@ -31,8 +31,9 @@ def check_mesh(mesh: Mesh) -> None:
     inside when one loop runs counter-clockwise.
     """
     _check_folds(mesh)
-    loops = outline_loops(mesh)
+    _check_curved(mesh)
     _check_outline(mesh)
+    loops = outline_loops(mesh)
     _check_parts(mesh)
     for number, loop in enumerate(loops):
         nodes = mesh.points[mesh.edges[loop]]
@@ -43,7 +44,6 @@ def check_mesh(mesh: Mesh) -> None:
             )
         if (area > 0) != (number == 0):
             raise SectionError(f"the mesh overlaps itself around {place(nodes[0, 0])}")
-    _check_curved(mesh)
 
 
 def _check_folds(mesh):
@@ -58,9 +58,9 @@ def _check_folds(mesh):
 
 
 def _check_outline(mesh):
-    start, end, middle = mesh.edges.T
-    halves = np.vstack([np.column_stack([start, middle]), np.column_stack([middle, end])])
-    contact = first_contact(mesh.points, halves)
+    curved = mesh.curved[mesh.edge_owner]
+    straight, halves = mesh.edges[~curved, :2], mesh.edges[curved]
+    contact = first_contact(mesh.points, np.vstack([straight, halves[:, [0, 2]], halves[:, [2, 1]]]))
     if contact is None:
         return
     where, crossing = contact

@@ -27,8 +27,10 @@ READERS = {
     ".xdmf": meshio.xdmf.read,
     ".xmf": meshio.xdmf.read,
 }
-CORNERS = {"triangle": 3, "triangle6": 3, "triangle7": 3, "quad": 4, "quad8": 4, "quad9": 4}
-LINES = {"line", "line3"}
+# Corners and nodes of the cells that make the section, nodes of those that name its walls.
+AREAS = {"triangle": (3, 3), "triangle6": (3, 6), "triangle7": (3, 7)}
+AREAS |= {"quad": (4, 4), "quad8": (4, 8), "quad9": (4, 9)}
+LINES = {"line": 2, "line3": 3}
 # Parts of the largest extent: points closer than this are one; z and symmetry lines may stray by this.
 SAME_PLACE = 1e-9
 
@@ -125,26 +127,33 @@ def _mesh(raw, unit):
 
 def _cells(raw, points):
     """Corners (n, 3) of all triangles, and start, end and mid-side node (m, 3) of sides that have one."""
-    count = len(points)
     triangles, sides = [np.empty((0, 3), dtype=int)], [np.empty((0, 3), dtype=int)]
     for block in raw.cells:
         if block.type in LINES or block.type == "vertex":
             continue
-        if block.type not in CORNERS:
+        if block.type not in AREAS:
             raise SectionError(f"{block.type} cells are not supported; use triangles or quads")
-        cells = np.asarray(block.data, dtype=int)
-        if cells.size and (cells.min() < 0 or cells.max() >= count):
-            raise SectionError(f"a {block.type} cell refers to a point that is not in the file")
-        k = CORNERS[block.type]
+        k, nodes = AREAS[block.type]
+        cells = _nodes(block, nodes, len(points))
         corners = cells[:, :k]
         triangles.append(corners if k == 3 else _halves(points, corners))
-        if cells.shape[1] >= 2 * k:
+        if nodes >= 2 * k:
             ends = [corners, np.roll(corners, -1, axis=1), cells[:, k : 2 * k]]
             sides.append(np.stack(ends, axis=2).reshape(-1, 3))
     triangles = np.vstack(triangles)
     if not len(triangles):
         raise SectionError("no triangles in the file")
     return triangles, np.vstack(sides)
+
+
+def _nodes(block, nodes, count):
+    """Point numbers (n, nodes) of a block of cells, checked."""
+    cells = np.asarray(block.data)
+    if cells.shape != (len(cells), nodes) or cells.dtype.kind not in "iu":
+        raise SectionError(f"the {block.type} cells are incomplete: is the file whole?")
+    if cells.size and (cells.min() < 0 or cells.max() >= count):
+        raise SectionError(f"a {block.type} cell refers to a point that is not in the file")
+    return cells.astype(int)
 
 
 def _halves(points, quads):
@@ -216,8 +225,9 @@ def _names_from_lines(raw, mesh, number):
     for index, block in enumerate(raw.cells):
         if block.type not in LINES:
             continue
-        labels = _labels(raw, {key: values[index] for key, values in raw.cell_data.items()}, len(block.data))
-        ends = number[np.asarray(block.data)[:, :2]]
+        lines = _nodes(block, LINES[block.type], len(number))
+        labels = _labels(raw, {key: values[index] for key, values in raw.cell_data.items()}, len(lines))
+        ends = number[lines[:, :2]]
         edge = np.where((ends >= 0).all(axis=1), _find_edges(mesh, ends), -1)
         inside = (edge < 0) & (labels != "")
         if inside.any():

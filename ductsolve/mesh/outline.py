@@ -92,7 +92,8 @@ def _check_drawing(points, rings):
     if len(same):
         raise SectionError(f"two corners of the outline lie at {place(points[same[0, 0]])}")
     for ring in rings:
-        if abs(_area(points[ring])) <= SAME_PLACE * np.ptp(points[ring], axis=0).max() ** 2:
+        length, width = np.linalg.svd(points[ring] - points[ring].mean(axis=0), compute_uv=False)
+        if width <= SAME_PLACE * length:
             raise SectionError(f"the outline from {place(points[ring[0]])} on has no area")
     contact = first_contact(points, _sides(rings))
     if contact:

@@ -243,8 +243,10 @@ def _sector_mesh(outer, sectors, inner=0.0):
     )
     if inner:
         radii = np.linspace(inner, outer, 5)
+        # Between lines the wall bulges by less than a sixteenth of the gap, a quarter of a ring.
+        lines = 1 + math.ceil(angle / math.sqrt((outer - inner) / outer / 2))
         points, corners = _grid(
-            radii, np.array([0, angle]), lambda r, t: np.column_stack([r * np.cos(t), r * np.sin(t)])
+            radii, np.linspace(0, angle, lines), lambda r, t: np.column_stack([r * np.cos(t), r * np.sin(t)])
         )
     else:
         points, corners = _pie(4, np.array([0, angle]))

@@ -35,7 +35,8 @@ class Curve:
     1. ``yield_stress`` and ``exponent_bound``;
     2. ``terms(rate)``: stress above the yield stress, and its first two derivatives by ln(rate);
     3. ``potential(rate)`` and ``complementary_at(rate)``, F and F* at the stress of that rate;
-    4. ``knots``: (n,) rising rates that resolve the curve, a power law (above yield) beyond them.
+    4. ``knots``: (n,) rising rates that resolve the curve, any kink of its terms among them; beyond
+       them it is a power law, above the yield stress.
 
     It may replace whatever it has in closed form.
     """
@@ -44,7 +45,6 @@ class Curve:
     exponent_bound: float
     power_index: None = None
     knots: Array
-    step_order: int = 3  # see ``Inverse``
 
     def terms(self, rate: Array) -> tuple[Array, Array, Array | None]:
         raise NotImplementedError
@@ -90,7 +90,7 @@ class Curve:
 
     @cached_property
     def _inverse(self) -> Inverse:
-        return Inverse(self.terms, self.knots, self.step_order)
+        return Inverse(self.terms, self.knots)
 
     @cached_property
     def _bend_range(self) -> tuple[float, float]:
@@ -124,10 +124,6 @@ class Tilted(Curve):
     @property
     def knots(self) -> Array:
         return self.law.knots
-
-    @property
-    def step_order(self) -> int:
-        return self.law.step_order - 1
 
     @cached_property
     def exponent_bound(self) -> float:

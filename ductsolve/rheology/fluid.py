@@ -24,7 +24,7 @@ class Fluid(Protocol):
        one it is the slope there, which a thickening power law has infinite.
     6. ``local_exponent`` is d ln(stress)/d ln(rate) and lies in [0, ``exponent_bound``] everywhere.
     7. ``power_index`` is the index of a fluid known to be a pure power law, None for any other.
-    8. NaN gives NaN, and nothing warns.
+    8. NaN gives NaN, save in a slope or exponent that is constant; nothing warns.
     """
 
     yield_stress: float

@@ -12,8 +12,9 @@ from ductsolve.rheology.piecewise import hermite
 # Terms of a curve y(x): y, dy/d(ln x) and d2y/d(ln x)2, or None for the last.
 Terms = Callable[[Array], tuple[Array, Array, "Array | None"]]
 
-# A step in ln x no longer than this lands on the answer to rounding, by the order of the error it leaves.
-_LAST_STEP = {3: 2e-6, 2: 1e-8, 1: 1e-12}
+# A step in ln x no longer than this lands on the answer to rounding: Halley's leaves an error of its
+# cube, Newton's of its square. No step crosses a kink: the first guess is exact at the knots.
+_LAST_HALLEY, _LAST_NEWTON = 2e-6, 1e-8
 
 _FAST_STEPS = 6
 
@@ -30,18 +31,15 @@ class Inverse:
     A cubic table of ln x against ln y gives the first guess, Halley's method in logarithms
     (Newton's without a second derivative) the answer; what has not settled after a few steps
     is bisected. NaN gives NaN.
-
-    ``order`` is that of the error a step leaves: 3 for Halley's on a smooth curve, 2 for Newton's,
-    one less where the last derivative used jumps.
     """
 
-    def __init__(self, terms: Terms, knots: Array, order: int):
+    def __init__(self, terms: Terms, knots: Array):
         with np.errstate(all="ignore"):
-            y, slope, _ = terms(knots)
+            y, slope, bend = terms(knots)
             log_x, log_y, log_slope = np.log(knots), np.log(y), y / slope
         rising = np.r_[True, np.diff(log_y) > 0.0]
         self._terms = terms
-        self._last_step = _LAST_STEP[order]
+        self._last_step = _LAST_NEWTON if bend is None else _LAST_HALLEY
         self._guess = hermite(log_y[rising], log_x[rising], log_slope[rising])
         self._low, self._high = log_x[0] - 1.0, log_x[-1] + 1.0
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import MISSING, field, fields
 from numbers import Real
@@ -14,8 +15,6 @@ LEAST_INDEX, LARGEST_INDEX = 0.01, 5.0
 
 # Exponents of a transition outside these make it wider than all measurable rates, or a kink.
 LEAST_TRANSITION, LARGEST_TRANSITION = 0.05, 10.0
-
-_LARGEST_NUMBER = 1e300
 
 
 def above_zero(value: float) -> bool:
@@ -71,11 +70,11 @@ class Law:
         self._check_together()
 
     def _checked(self, name: str, value: Any, metadata: Any) -> float:
-        number = isinstance(value, Real) and not isinstance(value, bool) and abs(value) < _LARGEST_NUMBER
-        if not (number and metadata["accepts"](value)):
+        number = _as_float(value)
+        if not (math.isfinite(number) and metadata["accepts"](number)):
             wanted, unit = _WANTED[metadata["accepts"]], metadata["unit"]
             raise self._error(f"{name} is {repr(value)[:40]}; give a finite number {wanted} [{unit}]")
-        return float(value)
+        return number
 
     def _check_together(self) -> None:
         """Raise ``FluidError`` where parameters, each fine alone, make no rising curve together."""
@@ -86,3 +85,13 @@ class Law:
     def describe(self) -> tuple[tuple[str, float, str], ...]:
         """(label, value, SI unit text) of every parameter, in the order of the constructor."""
         return tuple((f.metadata["label"], getattr(self, f.name), f.metadata["unit"]) for f in fields(self))
+
+
+def _as_float(value: Any) -> float:
+    """The number as a float; NaN for anything that is none, such as text or True."""
+    if isinstance(value, bool) or not isinstance(value, Real):
+        return math.nan
+    try:
+        return float(value)
+    except OverflowError:
+        return math.inf

@@ -18,8 +18,8 @@ from ductsolve.rheology.piecewise import Piecewise, hermite
 # Flatter pieces are a plateau, from which the rate could not be told; steeper ones are scatter.
 LEAST_EXPONENT, LARGEST_EXPONENT = 1e-3, 5.0
 
-# End slopes stay within these multiples of the slope of the last piece, whatever the curvature there.
-_LEAST_END, _LARGEST_END = 0.5, 2.0
+# An end slope is at least this part of the last piece's, whatever the curvature there.
+_LEAST_END = 0.5
 
 # Pieces between points are cut until neither ln(rate) nor ln(stress) changes by more than this in one,
 # and into this many at least.
@@ -44,7 +44,6 @@ class FlowCurve(Curve):
 
     law_name: ClassVar[str] = "flow curve"
     yield_stress: ClassVar[float] = 0.0
-    step_order: ClassVar[int] = 2  # the bend jumps at every point
 
     shear_rate: Array
     shear_stress: Array
@@ -179,7 +178,7 @@ def monotone_slopes(x: Array, y: Array) -> Array:
 def _end_slope(width: Array, secant: Array) -> float:
     """Slope at an end from the first two pieces seen from it."""
     parabola = secant[0] + width[0] / (width[0] + width[1]) * (secant[0] - secant[1])
-    return float(np.clip(parabola, _LEAST_END * secant[0], min(_LARGEST_END * secant[0], LARGEST_EXPONENT)))
+    return min(max(parabola, _LEAST_END * secant[0]), LARGEST_EXPONENT)
 
 
 def _column(name: str, values: Sequence[float] | Any) -> Array:

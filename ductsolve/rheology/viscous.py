@@ -289,4 +289,4 @@ class Ellis(Curve, Law):
 
     @cached_property
     def _forward(self) -> Inverse:
-        return Inverse(self._inverse_terms, self._stress_knots, order=3)
+        return Inverse(self._inverse_terms, self._stress_knots)

@@ -35,6 +35,7 @@ GOAL_DROP = 8.0  # how much the gap is hoped to fall from level to level
 PROMISING = 1.5  # brackets are worked out once they should come this close to the accuracy
 UNKNOWN: Bracket = (0.0, math.inf)
 MOST_CORRECTIONS = 30
+CEILING_STEPS = (0.003, 0.01, 0.03, 0.1, 0.3)
 FIRST_SLACK = 0.01
 SLACK = 0.1  # of the half-width that is expected
 
@@ -141,7 +142,7 @@ class FlowRateWanted(_Duty):
             return Answer(iterate, estimate, bracket, error)
         if iterate.flow <= 0:
             self._aim(iterate, 0.0)
-            return Answer(iterate, 0.0, UNKNOWN, 1.0)
+            return Answer(iterate, 0.0, self._ceiling(iterate) if final else UNKNOWN, 1.0)
         bend = response(iterate)
         wanted = gap_wanted(iterate, bend, self.accuracy)
         bracket = UNKNOWN
@@ -151,6 +152,18 @@ class FlowRateWanted(_Duty):
         estimate, error = _general_estimate(iterate)
         self._aim(iterate, wanted)
         return Answer(iterate, float(np.clip(self.copies * estimate, *bracket)), bracket, error)
+
+    def undecided(self, answer: Answer) -> Answer:
+        """The same answer when nobody can tell whether anything flows."""
+        return Answer(answer.iterate, 0.0, self._ceiling(answer.iterate), 1.0)
+
+    def _ceiling(self, iterate: Iterate) -> Bracket:
+        """Between no flow and what convexity allows: Q(G) <= (Phi(G + d) - Phi(G))/d with Phi(G) >= 0."""
+        ceilings = []
+        for part in CEILING_STEPS:
+            beyond = self._relax(iterate.level, iterate.psi, self.gradient * (1 + part))
+            ceilings.append(self.copies * beyond.bracket.high / (part * self.gradient))
+        return 0.0, min(ceilings)
 
 
 class GradientWanted(_Duty):

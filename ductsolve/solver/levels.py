@@ -79,10 +79,15 @@ def _cap(level, fluid, gradient, psi, goal):
 
 
 def refine(iterate: Iterate) -> tuple[Level, np.ndarray]:
-    """Next level and the stress function on it: refined where most of the gap is."""
-    gap = np.maximum(iterate.bracket.gap, 0.0)
+    """Next level and the stress function on it."""
+    return iterate.level.refined(dominant(iterate.bracket.gap), iterate.psi)
+
+
+def dominant(gap: np.ndarray) -> np.ndarray:
+    """Mask of the fewest triangles that hold most of the gap."""
+    gap = np.maximum(gap, 0.0)
     order = np.argsort(-gap)
     summed = np.cumsum(gap[order])
     marked = np.zeros(len(gap), dtype=bool)
     marked[order[: np.searchsorted(summed, GAP_SHARE * summed[-1]) + 1]] = True
-    return iterate.level.refined(marked, iterate.psi)
+    return marked

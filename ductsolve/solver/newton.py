@@ -14,6 +14,8 @@ Array = np.ndarray
 
 MOST_STEPS = 60
 SUFFICIENT = 1e-4  # part of the predicted gain a step must bring (Armijo)
+PATIENCE = 12
+SMALLEST_SHARE = 1e-3
 SMALLEST_STEP = 2.0**-20
 TINY = 1e-200
 
@@ -45,7 +47,7 @@ class Capped:
         return self.fluid.complementary(magnitude) + self.fluidity / 2 * magnitude**2
 
 
-def _tensor(along, across, direction):
+def tensor(along, across, direction):
     """Symmetric tensor (11, 12, 22): ``along`` the direction, ``across`` it."""
     change = along - across
     x, y = direction
@@ -90,11 +92,11 @@ def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop
     """
     elements, system = level.elements, level.stress_system
     stress = level.stress(psi)
-    for step in range(1, MOST_STEPS + 1):
+    for step in range(1, MOST_STEPS + 1):  # noqa: B007
         size = _size(stress)
         secant, tangent = capped.linearised(gradient * size)
         direction = curl_transposed(stress / np.maximum(size, TINY))
-        solve = system.factor(elements.stiffness(_tensor(tangent, secant, direction)))
+        solve = system.factor(elements.stiffness(tensor(tangent, secant, direction)))
         load = -elements.load(curl_transposed(secant * stress))
         change = system.spread(solve(load))
         predicted = gradient**2 * float(np.sum(load * change))
@@ -134,30 +136,27 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
     """Velocity that best belongs to the stress, by steps in the stress at the quadrature points.
 
     A velocity is worth G int w - int F(|grad w|), its lower bound on the potential. Ends at the second
-    step that adds at most ``stop`` times the best worth; returns the best velocity met.
+    step that adds at most ``stop`` times the best worth, or when ``PATIENCE`` steps found nothing of worth;
+    returns the best velocity met.
     """
     elements, system = level.elements, level.velocity_system
     stress = gradient * level.stress(psi)
     best, most, idle = np.zeros((elements.count, 6)), 0.0, 0
-    for step in range(1, MOST_STEPS + 1):
+    for step in range(1, MOST_STEPS + 1):  # noqa: B007
         size = _size(stress)
         secant, tangent = capped.linearised(size)
-        viscosity = _tensor(1 / tangent, 1 / secant, stress / np.maximum(size, TINY))
+        viscosity = tensor(1 / tangent, 1 / secant, stress / np.maximum(size, TINY))
         solve = system.factor(elements.stiffness(viscosity))
         pull = stress * (1 - secant / tangent)  # the rate secant x stress lies along the stress
         velocity = system.spread(solve(gradient * elements.unit_load - elements.load(pull)))
         rate = elements.gradient(velocity)
-        spent = elements.integral(capped.fluid.potential(_size(rate))).sum()
-        worth = gradient * float(np.sum(elements.unit_load * velocity)) - spent
+        share, worth = _worth(elements, capped.fluid, gradient, velocity, _size(rate))
         idle += worth - most <= stop * most
         if worth > most:
-            best, most = velocity, worth
-        if idle == 2 or not np.isfinite(worth):
+            best, most = share * velocity, worth
+        if idle == (2 if most > 0 else PATIENCE) or not np.isfinite(worth):
             break
-        off = rate - secant * stress
-        moved = np.stack(
-            [viscosity[0] * off[0] + viscosity[1] * off[1], viscosity[1] * off[0] + viscosity[2] * off[1]]
-        )
+        moved = _applied(viscosity, rate - secant * stress)
 
         def energy(t, stress=stress, moved=moved):
             return elements.integral(capped.energy(_size(stress + t * moved))).sum()
@@ -165,3 +164,23 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
         predicted = -float(np.sum(elements.weights * secant * np.sum(stress * moved, axis=0)))
         stress = stress + _line_search(energy, max(predicted, 0.0))[0] * moved
     return Velocity(best, stress, solve, step)
+
+
+def _worth(elements, fluid, gradient, velocity, rate):
+    """Share of a velocity that is worth most (of 1, 1/2, 1/4, ...; 1 unless that is worth nothing) and
+    its worth: close to rest the right shape often comes too large."""
+    drive = gradient * float(np.sum(elements.unit_load * velocity))
+    share = 1.0
+    while share > SMALLEST_SHARE:
+        worth = share * drive - float(elements.integral(fluid.potential(share * rate)).sum())
+        if worth > 0 or not fluid.yield_stress:
+            return share, worth
+        share /= 2
+    return 0.0, 0.0
+
+
+def _applied(matrix, vector):
+    """Symmetric matrix (11, 12, 22) times vector."""
+    return np.stack(
+        [matrix[0] * vector[0] + matrix[1] * vector[1], matrix[1] * vector[0] + matrix[2] * vector[1]]
+    )

@@ -39,6 +39,8 @@ def plug(level: Level, fluid: Fluid, gradient: float, psi: np.ndarray, gap: floa
     """
     if fluid.yield_stress == 0:
         return Plug(0.0, 0.0, slow_rate)
+    if gap == 0:  # rest, proved
+        return Plug(1.0, 1.0, slow_rate)
     elements = Elements(level.mesh, subdivided(gauss(2), 1))
     stress = gradient * size(level.stress(psi, elements)).ravel()
     weights = elements.weights.ravel()

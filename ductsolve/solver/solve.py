@@ -13,8 +13,9 @@ from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
 from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
 from ductsolve.solver.levels import first_level, refine
+from ductsolve.solver.startup import LimitLevel, starts
 
-TRIANGLE_BUDGET = 60_000
+TRIANGLE_BUDGET = 20_000
 METHODS = ("newton", "picard")
 NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
 TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
@@ -58,13 +59,19 @@ def solve(
         duty = FlowRateWanted(section, fluid, float(pressure_gradient), accuracy, picard)
     else:
         duty = GradientWanted(section, fluid, float(flow_rate), accuracy, picard)
-    level, psi, history = first_level(section), None, []
+    level, psi, history, moves = first_level(section), None, [], None
     while True:
         last = len(level.mesh.triangles) * TYPICAL_GROWTH > triangle_budget
         answer = duty.answer(level, psi, final=last)
         history.append(_record(answer))
         if progress:
             progress(history[-1])
+        if moves is None and pressure_gradient is not None and answer.iterate.bracket.low <= 0:
+            moves, limit = starts(section, fluid, duty.gradient)
+            if moves is False:
+                return _rest(duty, limit, history)
+            if moves is None:
+                return _flow(duty, duty.undecided(answer), Status.UNDECIDED, history)
         if _reached(answer, accuracy, len(history)):
             return _flow(duty, answer, Status.ANSWERED, history)
         if last:
@@ -117,6 +124,27 @@ def _flow(duty, answer: Answer, status: Status, history) -> DuctFlow:
         velocity_field=iterate.velocity.local * (rate / computed if computed > 0 else 0.0),
         solved_gradient=iterate.gradient,
         gap=duty.copies * iterate.bracket.width,
+    )
+
+
+def _rest(duty, limit: LimitLevel, history) -> DuctFlow:
+    """No flow, proved by a balanced stress that nowhere exceeds the yield stress."""
+    return DuctFlow(
+        section=duty.section,
+        fluid=duty.fluid,
+        pressure_gradient=duty.gradient,
+        flow_rate=0.0,
+        pressure_gradient_bracket=(duty.gradient, duty.gradient),
+        flow_rate_bracket=(0.0, 0.0),
+        estimated_error=0.0,
+        accuracy=duty.accuracy,
+        status=Status.NO_FLOW,
+        history=tuple(history),
+        level=limit.level,
+        psi=limit.psi,
+        velocity_field=np.zeros_like(limit.psi),
+        solved_gradient=duty.gradient,
+        gap=0.0,
     )
 
 

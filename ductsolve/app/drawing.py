@@ -1,0 +1,78 @@
+"""What there is to draw: the section in fine straight triangles, its outline and its mesh lines."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ductsolve.mesh.loops import outline_loops
+from ductsolve.mesh.triangles import SIDES, Mesh, edge_points
+from ductsolve.solver.quadratic import corner_rule
+
+SAME_PLACE = 1e-9  # of the section's size
+ENOUGH_TRIANGLES = 12_000  # for a smooth picture of a page's width
+SIDE_SAMPLES = np.linspace(0, 1, 9)
+
+
+@dataclass(frozen=True, eq=False)
+class Drawing:
+    """The section in straight triangles, fine enough that curved walls and contours look smooth.
+
+    Attributes
+    ----------
+    points : (n, 2) [m]
+    triangles : (m, 3)
+    weights, nodes : (n, 6) shape functions of the points and the nodes of the mesh they belong to
+    """
+
+    points: np.ndarray
+    triangles: np.ndarray
+    weights: np.ndarray
+    nodes: np.ndarray
+
+    def values(self, nodal: np.ndarray) -> np.ndarray:
+        """Values (n,) at the points of a field given at the nodes of the mesh."""
+        return np.einsum("nk,nk->n", self.weights, nodal[self.nodes])
+
+
+def drawing(mesh: Mesh) -> Drawing:
+    """Cut every six-node triangle of a mesh into equal parts."""
+    count = len(mesh.triangles)
+    level = 1 + sum(count * 4**k < ENOUGH_TRIANGLES for k in (1, 2))
+    rule, parts = corner_rule(level), _parts(2**level)
+    local = len(rule.points)
+    weights = np.tile(rule.values, (count, 1))
+    nodes = np.repeat(mesh.triangles, local, axis=0)
+    points = np.einsum("nk,nkd->nd", weights, mesh.points[nodes])
+    grid = np.round(points / (SAME_PLACE * np.ptp(mesh.points, axis=0).max()))
+    _, first, number = np.unique(grid, axis=0, return_index=True, return_inverse=True)
+    triangles = (parts + local * np.arange(count)[:, None, None]).reshape(-1, 3)
+    return Drawing(points[first], number.ravel()[triangles], weights[first], nodes[first])
+
+
+def _parts(n):
+    """Triangles (n^2, 3) between the points (i, j), i + j <= n, numbered as in ``corner_rule``."""
+    number = {(i, j): k for k, (i, j) in enumerate((i, j) for i in range(n + 1) for j in range(n + 1 - i))}
+    upright = [(number[i, j], number[i + 1, j], number[i, j + 1]) for i, j in number if i + j < n]
+    inverted = [
+        (number[i + 1, j], number[i + 1, j + 1], number[i, j + 1]) for i, j in number if i + j < n - 1
+    ]
+    return np.array(upright + inverted)
+
+
+def outlines(mesh: Mesh) -> list[np.ndarray]:
+    """Closed outlines as points (n, 2), walked with the section on the left."""
+    return [_sampled(mesh.points[mesh.edges[loop]]).reshape(-1, 2) for loop in outline_loops(mesh)]
+
+
+def mesh_lines(mesh: Mesh) -> np.ndarray:
+    """Sides of the triangles as short lines (n, k, 2), each once."""
+    sides = mesh.triangles[:, SIDES].reshape(-1, 3)
+    _, first = np.unique(sides[:, 2], return_index=True)
+    return _sampled(mesh.points[sides[first]])
+
+
+def _sampled(nodes):
+    """Points (n, k, 2) along parabolic edges given by start, end and middle (n, 3, 2)."""
+    return np.stack([edge_points(nodes, s) for s in SIDE_SAMPLES], axis=1)
