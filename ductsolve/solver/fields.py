@@ -71,6 +71,12 @@ class Level:
         known = (self.origin[:, None, None] - elements.position) / 2
         return known + curl(elements.gradient(psi))
 
+    def nodal(self, local: np.ndarray) -> np.ndarray:
+        """Values (n_points,) of a continuous field from local values (n_triangles, 6)."""
+        values = np.empty(len(self.mesh.points))
+        values[self.mesh.triangles] = local
+        return values
+
     @cached_property
     def wall_forces(self) -> WallForces:
         """What a stress function means as force on the walls."""

@@ -17,7 +17,7 @@ from ductsolve.solver.limit import LimitBracket, bracket_limit
 from ductsolve.solver.newton import balance
 
 TRIANGLE_BUDGET = 30_000
-FEWEST_LEVELS = 2  # the best estimate looks back one level
+AIM = 0.4  # of the accuracy asked: narrower, for the sake of the best estimate inside
 DECISION_ACCURACY = 1e-3  # nearer to the start-up gradient than this, flow or rest is left undecided
 
 
@@ -76,12 +76,10 @@ def start_up_gradient(section: Section, yield_stress: float, *, accuracy: float 
         raise FluidError(f"yield_stress must be positive and finite [Pa], found {yield_stress!r}")
     if not (isinstance(accuracy, int | float) and 1e-5 <= accuracy < 1):
         raise DutyError(f"accuracy must lie between 1e-05 and 1 (0.01 is 1 %), found {accuracy!r}")
-    levels = 0
-    for found in limit_levels(section, accuracy):
-        reached = found.high - found.low <= accuracy * (found.high + found.low)
-        levels += 1
-        if reached and (levels >= FEWEST_LEVELS or found.high - found.low <= accuracy * found.low / 5):
+    for found in limit_levels(section, AIM * accuracy):
+        if found.high - found.low <= AIM * accuracy * (found.high + found.low):
             break
+    reached = found.high - found.low <= accuracy * (found.high + found.low)
     return StartUp(
         bracket=(found.low * yield_stress, found.high * yield_stress),
         estimate=found.estimate * yield_stress,

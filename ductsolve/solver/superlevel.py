@@ -1,68 +1,113 @@
-"""Parts of a section above a value of a nodal field: their area and outline length."""
+"""Parts of a section where a nodal field is positive: outline length over area, made least."""
 
 from __future__ import annotations
 
 import numpy as np
+from scipy.optimize import minimize
 
 from ductsolve.solver.fields import Level
-from ductsolve.solver.quadratic import Elements, interior
 from ductsolve.solver.wallpoints import WallPoints
 
 # The four straight triangles between a six-node triangle's nodes; the first three hold a corner each.
 _QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
+MOST_ITERATIONS = 100
+TINY = 1e-300
 
 
-class Superlevels:
-    """Sets {field >= value}, the field taken linear between neighbouring nodes.
+class PositiveParts:
+    """Sets {field >= 0} of nodal fields (n_points,), taken linear between neighbouring nodes.
 
     Symmetry lines do not count as outline. Behind a curved half-edge lies a sliver more (or less) than the
     straight triangle: it is counted in full where the triangle is, and against the set where it is cut.
     """
 
-    def __init__(self, level: Level, field: np.ndarray):
-        values = field[:, _QUARTERS].reshape(-1, 3)
-        points = Elements(level.mesh, interior()).nodes[:, _QUARTERS].reshape(-1, 3, 2)
-        order = np.argsort(values, axis=1)
-        self._values = np.take_along_axis(values, order, axis=1)
-        self._points = np.take_along_axis(points, order[..., None], axis=1)
-        self._areas = _areas(points)
-        walls = WallPoints(level)
+    def __init__(self, level: Level):
+        mesh, walls = level.mesh, WallPoints(level)
+        self._count = len(mesh.points)
+        self._nodes = mesh.triangles[:, _QUARTERS].reshape(-1, 3)
+        self._points = mesh.points[self._nodes]
+        u, v = (self._points[:, k] - self._points[:, 0] for k in (1, 2))
+        self._areas = np.abs(_cross(u, v)) / 2
         self._slivers = _slivers(level, walls)
-        start, end, middle = walls.values(field).T
-        self._wall = np.sort(np.vstack([np.column_stack([start, middle]), np.column_stack([end, middle])]))
+        edges = mesh.triangles[walls.owner[:, None], walls.nodes]
+        self._wall = np.vstack([edges[:, [0, 2]], edges[:, [1, 2]]])
         self._wall_length = level.wall_forces.lengths.T.ravel()
 
-    def ratio(self, value: float) -> float:
-        """Outline length over area [1/m] of the part of the field at or above ``value``."""
-        low, mid, high = self._values.T
-        whole = low >= value
-        lost = (low < value) & (value <= mid)  # the lowest corner is cut off
-        left = (mid < value) & (value < high)  # only the highest corner remains
-        cut, rest = _corner(self._values[lost], self._points[lost], 0, value)
-        tip, kept = _corner(self._values[left], self._points[left], 2, value)
-        area = self._areas[whole].sum() + self._slivers[whole].sum()
-        area += (self._areas[lost] * (1 - rest)).sum() + (self._areas[left] * kept).sum()
-        area += np.minimum(self._slivers[lost | left], 0.0).sum()
-        lower, upper = self._wall.T
-        span = np.where(upper > lower, upper - lower, 1.0)
-        share = np.where(lower >= value, 1.0, np.clip((upper - value) / span, 0.0, 1.0))
-        length = cut.sum() + tip.sum() + share @ self._wall_length
-        return float(length / area) if area > 0 else np.inf
+    def ratio(self, field: np.ndarray) -> tuple[float, np.ndarray]:
+        """Outline length over area [1/m] and its slope by each nodal value (n_points,)."""
+        slopes = np.zeros((2, self._count))  # of length and of area
+        positive = field[self._nodes] >= 0
+        corners = positive.sum(axis=1)
+        whole = corners == 3
+        cut = (corners == 1) | (corners == 2)
+        area = (self._areas[whole] + self._slivers[whole]).sum() + np.minimum(self._slivers[cut], 0.0).sum()
+        length = self._wall_part(field, slopes)
+        for kept in (1, 2):
+            chosen = np.flatnonzero(corners == kept)
+            if len(chosen):
+                alone = positive[chosen] if kept == 1 else ~positive[chosen]
+                part_length, part_area = self._cut_part(
+                    field, chosen, alone.argmax(axis=1), kept == 1, slopes
+                )
+                length, area = length + part_length, area + part_area
+        if area <= 0:
+            return np.inf, np.zeros(self._count)
+        return length / area, slopes[0] / area - length / area**2 * slopes[1]
+
+    def _cut_part(self, field, chosen, corner, tip, slopes):
+        """Length of the cuts through some triangles and the area kept; ``tip`` where only the corner is."""
+        row = np.arange(len(chosen))
+        nodes, points = self._nodes[chosen], self._points[chosen]
+        here, at = nodes[row, corner], field[nodes[row, corner]]
+        others = [nodes[row, (corner + k) % 3] for k in (1, 2)]
+        reach = [points[row, (corner + k) % 3] - points[row, corner] for k in (1, 2)]
+        share = [at / (at - field[other]) for other in others]
+        across = share[0][:, None] * reach[0] - share[1][:, None] * reach[1]
+        length = np.linalg.norm(across, axis=1)
+        corner_area = self._areas[chosen] * share[0] * share[1]
+        sign = 1.0 if tip else -1.0
+        for k, other in enumerate(others):
+            by_share = np.stack(
+                [
+                    (1 - 2 * k) * np.sum(across * reach[k], axis=1) / np.maximum(length, TINY),
+                    sign * self._areas[chosen] * share[1 - k],
+                ]
+            )
+            spread = (at - field[other]) ** 2
+            for slope, value in zip(slopes, by_share, strict=True):
+                slope += np.bincount(here, -value * field[other] / spread, self._count)
+                slope += np.bincount(other, value * at / spread, self._count)
+        return length.sum(), (corner_area if tip else self._areas[chosen] - corner_area).sum()
+
+    def _wall_part(self, field, slopes):
+        """Length of wall along the set."""
+        order = np.argsort(field[self._wall], axis=1)
+        lower, upper = np.take_along_axis(self._wall, order, axis=1).T
+        low, high = field[lower], field[upper]
+        crossed = np.flatnonzero((low < 0) & (high >= 0))
+        long = self._wall_length[crossed]
+        low_part, high_part = low[crossed], high[crossed]
+        spread = (high_part - low_part) ** 2
+        slopes[0] += np.bincount(upper[crossed], -long * low_part / spread, self._count)
+        slopes[0] += np.bincount(lower[crossed], long * high_part / spread, self._count)
+        return self._wall_length[low >= 0].sum() + (long * high_part / (high_part - low_part)).sum()
 
 
-def _corner(values, points, corner, value):
-    """Length of the cut at ``value`` across triangles and the share of area on one corner's side of it."""
-    others = [k for k in range(3) if k != corner]
-    at = [(value - values[:, corner]) / (values[:, k] - values[:, corner]) for k in others]
-    first, second = (
-        points[:, corner] + t[:, None] * (points[:, k] - points[:, corner])
-        for t, k in zip(at, others, strict=True)
-    )
-    return np.linalg.norm(second - first, axis=1), at[0] * at[1]
+def least_ratio(parts: PositiveParts, fields: list[np.ndarray], thresholds: int) -> float:
+    """Least outline length over area [1/m] found from nodal fields.
 
-
-def _areas(points):
-    return np.abs(_cross(points[:, 1] - points[:, 0], points[:, 2] - points[:, 0])) / 2
+    Takes the best superlevel set of all fields, then moves its free outline by descent on the nodal values.
+    Every set met is an upper bound; the least counts.
+    """
+    best, start = np.inf, None
+    for values in fields:
+        for threshold in np.quantile(values, np.linspace(0.0, 0.98, thresholds)):
+            ratio = parts.ratio(values - threshold)[0]
+            if ratio < best:
+                best, start = ratio, values - threshold
+    start = start / np.abs(start).max()
+    found = minimize(parts.ratio, start, jac=True, method="L-BFGS-B", options={"maxiter": MOST_ITERATIONS})
+    return min(best, float(found.fun)) if np.isfinite(found.fun) else best
 
 
 def _cross(u, v):

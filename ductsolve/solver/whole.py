@@ -28,7 +28,7 @@ class Whole:
 
     def __init__(self, section: Section, level: Level):
         part, copies = level.mesh, section.copies
-        self._triangles, self._count = part.triangles, len(part.points)
+        self._level, self._count = level, len(part.points)
         points = np.vstack([part.points @ m[:, :2].T + m[:, 2] for m in copies])
         number, first = _joined(points, part, len(copies))
         self._source = first % self._count
@@ -49,9 +49,7 @@ class Whole:
 
     def nodal(self, local: np.ndarray) -> np.ndarray:
         """Values at the nodes of ``mesh`` from local values (n_triangles, 6) on the part."""
-        values = np.empty(self._count)
-        values[self._triangles] = local
-        return values[self._source]
+        return self._level.nodal(local)[self._source]
 
 
 def _joined(points, part, copies):
