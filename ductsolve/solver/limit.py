@@ -35,17 +35,19 @@ THRESHOLDS = 60
 
 @dataclass(frozen=True, eq=False)
 class LimitBracket:
-    """Bounds on h [1/m] on one level.
+    """Bounds on h [1/m] on one level, for walls on the mesh edges.
 
     Attributes
     ----------
     low, high : 1/M of a balanced stress, and length/area of a part of the section
+    doubt : what curved walls may change either by, relative
     psi : (n_triangles, 6) stress function of that stress per unit gradient [m2]
     gap : (n_triangles,) how far each triangle's stress and velocity are from belonging together
     """
 
     low: float
     high: float
+    doubt: float
     psi: np.ndarray
     gap: np.ndarray
 
@@ -98,7 +100,7 @@ def bracket_limit(level: Level, psi: np.ndarray, hydraulic_diameter: float, accu
     low = 1 / largest_stress(level, psi)
     deviation = level.mesh.edge_deviation.max(initial=0.0)
     doubt = 8 * deviation / hydraulic_diameter  # a wall out of place changes length/area by 4 d/D; doubled
-    return LimitBracket(low * (1 - doubt), high * (1 + doubt), psi, _gap(points, psi, velocity, 1 / low))
+    return LimitBracket(low, high, doubt, psi, _gap(points, psi, velocity, 1 / low))
 
 
 def _largest(stress):

@@ -19,6 +19,7 @@ TRIANGLE_BUDGET = 20_000
 METHODS = ("newton", "picard")
 NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
 TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
+FAINT_SHARE = 0.25
 FEWEST_LEVELS = 2  # the best estimate of a power law looks back one level
 
 
@@ -61,12 +62,16 @@ def solve(
         duty = GradientWanted(section, fluid, float(flow_rate), accuracy, picard)
     level, psi, history, moves = first_level(section), None, [], None
     while True:
-        last = len(level.mesh.triangles) * TYPICAL_GROWTH > triangle_budget
+        # Where proved flow does not show on a fine mesh, it is too faint for any affordable one.
+        budget = triangle_budget * (FAINT_SHARE if moves else 1.0)
+        last = len(level.mesh.triangles) * TYPICAL_GROWTH > budget
         answer = duty.answer(level, psi, final=last)
         history.append(_record(answer))
         if progress:
             progress(history[-1])
-        if moves is None and pressure_gradient is not None and answer.iterate.bracket.low <= 0:
+        if answer.iterate.bracket.low > 0:
+            moves = None
+        elif moves is None and pressure_gradient is not None:
             moves, limit = starts(section, fluid, duty.gradient)
             if moves is False:
                 return _rest(duty, limit, history)

@@ -18,6 +18,7 @@ from ductsolve.solver.newton import balance
 
 TRIANGLE_BUDGET = 30_000
 AIM = 0.4  # of the accuracy asked: narrower, for the sake of the best estimate inside
+FIRST_SHARE = 0.9  # where the limit lies in a first bracket, as measured: the upper bound is the sharper
 DECISION_ACCURACY = 1e-3  # nearer to the start-up gradient than this, flow or rest is left undecided
 
 
@@ -119,21 +120,20 @@ def limit_levels(section: Section, accuracy: float) -> Iterator[LimitLevel]:
         level, psi = level.refined(dominant(now.gap), now.psi)
 
 
-def _best(
-    best: LimitLevel | None, before: LimitBracket | None, now: LimitBracket, level: Level
-) -> LimitLevel:
-    """Bounds of all levels together; the estimate divides the bracket by how much each bound still moved."""
-    low = now.low if best is None else max(now.low, best.low)
-    high = now.high if best is None else min(now.high, best.high)
-    share = 0.5
+def _best(best: LimitLevel | None, before: LimitBracket | None, now: LimitBracket, level: Level) -> LimitLevel:
+    """Bounds of all levels together; the estimate divides the last bracket by how much each bound moved."""
+    low, high = now.low * (1 - now.doubt), now.high * (1 + now.doubt)
+    share = FIRST_SHARE
     if before is not None:
         below, above = abs(now.low - before.low), abs(now.high - before.high)
         share = below / (below + above) if below + above > 0 else share
-    newer = best is None or now.low >= best.low
+    newer = best is None or low >= best.low
+    if best is not None:
+        low, high = max(low, best.low), min(high, best.high)
     return LimitLevel(
         low=low,
         high=high,
-        estimate=low + share * (high - low),
+        estimate=float(np.clip(now.low + share * (now.high - now.low), low, high)),
         level=level if newer else best.level,
         psi=now.psi if newer else best.psi,
     )
