@@ -86,9 +86,9 @@ def wall_allowance(level: Level, fluid: Fluid, gradient: float, psi: Array) -> A
         forces = level.wall_forces
         stress = gradient * np.abs(forces(psi) / forces.lengths).max(axis=1)
         price = (
-            WALL_SAFETY * fluid.complementary(stress) * deviation[forces.edges] * forces.lengths.sum(axis=1)
+            WALL_SAFETY * fluid.complementary(stress) * deviation[forces.rows] * forces.lengths.sum(axis=1)
         )
-        np.add.at(allowance, level.mesh.edge_owner[forces.edges], price)
+        np.add.at(allowance, level.mesh.edge_owner[forces.rows], price)
     return allowance
 
 

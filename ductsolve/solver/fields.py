@@ -13,6 +13,7 @@ from ductsolve.mesh.bisect import bisect
 from ductsolve.mesh.triangles import Mesh
 from ductsolve.solver.quadratic import Elements, interior
 from ductsolve.solver.system import System
+from ductsolve.solver.walls import WallForces
 
 
 @dataclass(frozen=True, eq=False)
@@ -80,7 +81,7 @@ class Level:
     @cached_property
     def wall_forces(self) -> WallForces:
         """What a stress function means as force on the walls."""
-        return WallForces(self)
+        return WallForces(self.mesh, self.origin)
 
     def refined(self, marked: np.ndarray, psi: np.ndarray) -> tuple[Level, np.ndarray]:
         """Bisect the marked triangles; returns the new level and the stress function on it."""
@@ -88,52 +89,6 @@ class Level:
         cuts = None if self.cuts is None else step.local @ self.cuts[step.parent]
         new_psi = np.einsum("tij,tj->ti", step.local, psi[step.parent])
         return replace(self, mesh=step.mesh, cuts=cuts), new_psi
-
-
-class WallForces:
-    """Forces of the flow on the halves of every wall edge, per unit length of duct and unit gradient.
-
-    Attributes
-    ----------
-    edges : (n,) the wall's rows among the mesh's outline edges
-    lengths : (n, 2) lengths of the halves from start to middle and from middle to end [m]
-    """
-
-    def __init__(self, level: Level):
-        mesh = level.mesh
-        self.edges = np.flatnonzero(~mesh.symmetry_edges)
-        self._owner = mesh.edge_owner[self.edges]
-        nodes = mesh.edges[self.edges][:, [0, 2, 1]]
-        self._local = np.argmax(mesh.triangles[self._owner][:, None, :] == nodes[:, :, None], axis=2)
-        points = mesh.points[nodes]
-        self.lengths = np.stack([_half_length(points), _half_length(points[:, ::-1])], axis=1)
-        # The known part of the stress pushes on each half by (x - origin) . n / 2.
-        x, y = np.moveaxis(points - level.origin, 2, 0)
-        self._known = np.stack([_known_force(x, y), -_known_force(x[:, ::-1], y[:, ::-1])], axis=1)
-
-    def __call__(self, psi: np.ndarray) -> np.ndarray:
-        """Forces (n, 2) [m2] on the halves for a stress function (n_triangles, 6): pull of the fluid."""
-        ends = np.take_along_axis(psi[self._owner], self._local, axis=1)
-        return self._known - np.diff(ends, axis=1)
-
-
-# On the first half of a parabola through (start, middle, end): derivatives and integrals in s from 0 to 1/2.
-_HALF_S, _HALF_W = (np.polynomial.legendre.leggauss(4)[0] + 1) / 4, np.polynomial.legendre.leggauss(4)[1] / 4
-_HALF_N = np.stack(
-    [(1 - _HALF_S) * (1 - 2 * _HALF_S), 4 * _HALF_S * (1 - _HALF_S), _HALF_S * (2 * _HALF_S - 1)]
-)
-_HALF_D = np.stack([4 * _HALF_S - 3, 4 - 8 * _HALF_S, 4 * _HALF_S - 1])
-
-
-def _half_length(points):
-    """Length (n,) of the first half of parabolas (n, 3, 2)."""
-    dx, dy = (points[..., i] @ _HALF_D for i in (0, 1))
-    return np.sqrt(dx**2 + dy**2) @ _HALF_W
-
-
-def _known_force(x, y):
-    """Half the integral of x dy - y dx over the first half of parabolas with nodes (n, 3)."""
-    return ((x @ _HALF_N) * (y @ _HALF_D) - (y @ _HALF_N) * (x @ _HALF_D)) @ _HALF_W / 2
 
 
 def curl(gradient: np.ndarray) -> np.ndarray:

@@ -25,7 +25,6 @@ class Status(Enum):
     ANSWERED = "answered to the accuracy asked"
     NO_FLOW = "no flow, proved"
     BUDGET = "bracket true but wider than asked: the triangle budget is used up; allow more triangles"
-    STALLED = "bracket true but wider than asked: refinement no longer narrows it; ask for less accuracy"
     UNDECIDED = "flow or no flow not decided: the gradient is too near the start-up gradient"
 
 

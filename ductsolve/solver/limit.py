@@ -21,7 +21,7 @@ from ductsolve.solver.newton import TINY, curl_transposed, tensor
 from ductsolve.solver.quadratic import Elements, corner_rule
 from ductsolve.solver.superlevel import PositiveParts, least_ratio
 from ductsolve.solver.system import System
-from ductsolve.solver.wallpoints import WallPoints
+from ductsolve.solver.walls import WallPoints
 
 FIRST_WEIGHT, WEIGHT_GROWTH = 3.0, 3.0
 LAST_WEIGHT = 10.0  # over the accuracy: what the barrier leaves is about its inverse
@@ -58,7 +58,7 @@ class _Points:
     def __init__(self, level: Level, layer: float):
         self.level, self.layer = level, layer
         self.bulk = Elements(level.mesh, corner_rule(0))
-        self.wall = WallPoints(level)
+        self.wall = WallPoints(level.mesh, level.origin)
         self.wall_weights = self.wall.weights * layer
         self.total = float(self.bulk.weights.sum() + self.wall_weights.sum())
 

@@ -7,7 +7,7 @@ from collections.abc import Callable
 
 import numpy as np
 
-from ductsolve.errors import DutyError
+from ductsolve.errors import DutyError, FluidError, SectionError
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
@@ -54,6 +54,7 @@ def solve(
     DutyError
         when the duty is missing, doubled, not positive or not finite, or the accuracy out of range
     """
+    _check_objects(section, fluid)
     _check(pressure_gradient, flow_rate, accuracy, method)
     picard = method == "picard"
     if pressure_gradient is not None:
@@ -151,6 +152,16 @@ def _rest(duty, limit: LimitLevel, history) -> DuctFlow:
         solved_gradient=duty.gradient,
         gap=0.0,
     )
+
+
+def _check_objects(section, fluid):
+    """Refuse what is no section or no fluid."""
+    if not isinstance(section, Section):
+        raise SectionError(
+            f"section must come from rectangle(...), annulus(...) or the like, found {section!r}"
+        )
+    if not callable(getattr(fluid, "complementary", None)):
+        raise FluidError(f"fluid must be a law such as PowerLaw(...) or a FlowCurve, found {fluid!r}")
 
 
 def _check(pressure_gradient, flow_rate, accuracy, method):

@@ -120,7 +120,7 @@ def limit_levels(section: Section, accuracy: float) -> Iterator[LimitLevel]:
         level, psi = level.refined(dominant(now.gap), now.psi)
 
 
-def _best(best: LimitLevel | None, before: LimitBracket | None, now: LimitBracket, level: Level) -> LimitLevel:
+def _best(best, before: LimitBracket | None, now: LimitBracket, level: Level) -> LimitLevel:
     """Bounds of all levels together; the estimate divides the last bracket by how much each bound moved."""
     low, high = now.low * (1 - now.doubt), now.high * (1 + now.doubt)
     share = FIRST_SHARE

@@ -6,7 +6,7 @@ import numpy as np
 from scipy.optimize import minimize
 
 from ductsolve.solver.fields import Level
-from ductsolve.solver.wallpoints import WallPoints
+from ductsolve.solver.walls import WallEdges
 
 # The four straight triangles between a six-node triangle's nodes; the first three hold a corner each.
 _QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
@@ -22,13 +22,13 @@ class PositiveParts:
     """
 
     def __init__(self, level: Level):
-        mesh, walls = level.mesh, WallPoints(level)
+        mesh, walls = level.mesh, WallEdges(level.mesh)
         self._count = len(mesh.points)
         self._nodes = mesh.triangles[:, _QUARTERS].reshape(-1, 3)
         self._points = mesh.points[self._nodes]
         u, v = (self._points[:, k] - self._points[:, 0] for k in (1, 2))
         self._areas = np.abs(_cross(u, v)) / 2
-        self._slivers = _slivers(level, walls)
+        self._slivers = _slivers(mesh, walls)
         edges = mesh.triangles[walls.owner[:, None], walls.nodes]
         self._wall = np.vstack([edges[:, [0, 2]], edges[:, [1, 2]]])
         self._wall_length = level.wall_forces.lengths.T.ravel()
@@ -114,15 +114,14 @@ def _cross(u, v):
     return u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
 
 
-def _slivers(level, walls):
+def _slivers(mesh, walls):
     """Signed area between half-edge and chord, for each quarter triangle.
 
     Between a parabola and its chord lie 2/3 of the parallelogram of chord and sagitta, and between each half
     and the half's chord one eighth of that.
     """
-    slivers = np.zeros((len(level.mesh.triangles), 4))
-    nodes = level.mesh.points[level.mesh.triangles][walls.owner[:, None], walls.nodes]
-    start, end, middle = nodes[:, 0], nodes[:, 1], nodes[:, 2]
+    slivers = np.zeros((len(mesh.triangles), 4))
+    start, end, middle = walls.points.transpose(1, 0, 2)
     behind = _cross(middle - (start + end) / 2, end - start) * 2 / 3 / 8
     for k in (0, 1):
         np.add.at(slivers, (walls.owner, walls.nodes[:, k]), behind)
