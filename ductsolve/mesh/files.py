@@ -103,6 +103,8 @@ def _load(path):
 def _reason(error):
     """What a reader complained of, in one short line."""
     text = " ".join(str(error).split())
+    if isinstance(error, KeyError):
+        return f"no reader for its part {text}; .vtu files hold all kinds of cells"
     if "gmsh:physical" in text:
         return "some cells are in a physical group and some in none: put every curve and surface in one"
     return text[:120] or type(error).__name__
@@ -157,11 +159,11 @@ def _nodes(block, nodes, count):
 
 
 def _halves(points, quads):
-    """Triangles of quads cut along the diagonal whose lesser half is the larger."""
+    """Triangles of quads cut along the diagonal whose lesser half is the larger, in either orientation:
+    both diagonals give the same signed sum."""
     a, b, c, d = quads.T
     cuts = [[np.column_stack(t) for t in cut] for cut in ([(a, b, c), (a, c, d)], [(b, c, d), (b, d, a)])]
-    areas = [np.array([signed_areas(points, half) for half in cut]) for cut in cuts]
-    lesser = [np.where(area.sum(axis=0) < 0, -area, area).min(axis=0) for area in areas]
+    lesser = [np.min([signed_areas(points, half) for half in cut], axis=0) for cut in cuts]
     first = (lesser[0] >= lesser[1])[:, None]
     return np.vstack([np.where(first, one, other) for one, other in zip(*cuts, strict=True)])
 

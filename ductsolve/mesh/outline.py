@@ -18,8 +18,9 @@ from ductsolve.mesh.triangles import Boundary, mesh_from_corners
 SAME_PLACE = 1e-9
 # A side is Delaunay when the cotangents of the two angles opposite it do not add up to less than this.
 DELAUNAY = -1e-9
-# Inner points may lie this much sparser than the outline near them (Liepa 2003 has 1 for the growth).
-GROWTH, SPACING = 1.5, 2**0.5
+# Spacing of inner points: what it grows by with the distance from the outline, and how far from a point
+# another has room (the root of two is Liepa's); sides longer than this many spacings opposite are long.
+GROWTH, SPACING, LONG = 0.4, 2**0.5, 3
 
 
 def polygon(points, holes=()) -> Section:
@@ -126,7 +127,7 @@ def _inside(point, loop):
 
 
 def _first_mesh(points, rings, owner):
-    """Mesh with the corners of the outline, and inner points where they lie close together."""
+    """Mesh of the outline, with points inside where corners lie close, and on long sides facing those."""
     sides = _sides(rings)
     length = np.linalg.norm(points[sides[:, 1]] - points[sides[:, 0]], axis=1)
     spacing = np.zeros(len(points))
@@ -135,12 +136,13 @@ def _first_mesh(points, rings, owner):
     for corners in _clip_ears(points, _bridged(points, rings)):
         _add(apex, *corners)
     points, spacing = list(map(tuple, points.tolist())), spacing.tolist()
-    _relax(points, apex)
-    while _thicken(points, apex, spacing):
-        _relax(points, apex)
+    owner = dict(enumerate(owner.tolist()))
+    _relax(points, apex, list(apex))
+    while _thicken(points, apex, spacing) + _split_sides(points, apex, spacing, owner):
+        _relax(points, apex, list(apex))
     walls = [Boundary("outer wall"), *(Boundary(f"hole {k} wall") for k in range(1, len(rings)))]
     mesh = mesh_from_corners(points, _triangles(apex), walls, lambda ends: np.zeros(len(ends)))
-    mesh = replace(mesh, edge_boundary=owner[mesh.edges[:, 0]])
+    mesh = replace(mesh, edge_boundary=np.array([owner[k] for k in mesh.edges[:, 0]]))
     check_mesh(mesh)
     return mesh
 
@@ -221,9 +223,8 @@ def _triangles(apex):
     return np.array([(a, b, c) for (a, b), c in apex.items() if a < b and a < c])
 
 
-def _relax(points, apex):
-    """Flip inner sides until all are Delaunay (Lawson 1977)."""
-    stack = list(apex)
+def _relax(points, apex, stack):
+    """Flip the inner sides of a stack, and those around them, until all are Delaunay (Lawson 1977)."""
     while stack:
         a, b = stack.pop()
         if (a, b) not in apex or (b, a) not in apex:
@@ -246,21 +247,45 @@ def _cotangent(p, a, b):
 
 
 def _thicken(points, apex, spacing):
-    """Put points into triangles that are large for the spacing around them (Liepa 2003); their number.
+    """Put points into the middle of triangles with room for them; their number (after Liepa 2003).
 
-    The first triangle of a polygon with few corners has none; in one with many short sides the points
-    grow sparser inwards, and slivers from wall to wall vanish.
+    A polygon with few corners has none such; in one with many short sides the points grow sparser
+    inwards, and slivers from wall to wall vanish.
     """
     before = len(points)
     for corners in _triangles(apex).tolist():
+        a, b, c = corners
+        if apex.get((a, b)) != c:
+            continue  # gone since the points before this one
         centre = tuple(sum(points[k][axis] for k in corners) / 3 for axis in (0, 1))
-        wanted = GROWTH * sum(spacing[k] for k in corners) / 3
         gaps = [np.hypot(points[k][0] - centre[0], points[k][1] - centre[1]) for k in corners]
+        wanted = min(spacing[k] + GROWTH * gap for gap, k in zip(gaps, corners, strict=True))
         if all(SPACING * gap > max(wanted, spacing[k]) for gap, k in zip(gaps, corners, strict=True)):
-            a, b, c = corners
             new = len(points)
             points.append(centre)
             spacing.append(wanted)
             for side in ((a, b), (b, c), (c, a)):
                 _add(apex, *side, new)
+            _relax(points, apex, [(a, b), (b, c), (c, a)])
+    return len(points) - before
+
+
+def _split_sides(points, apex, spacing, owner):
+    """Halve outline sides that are long for the spacing at the obtuse corner opposite; their number."""
+    before = len(points)
+    for a, b in list(apex):
+        if (b, a) in apex:
+            continue
+        c = apex[a, b]
+        (ax, ay), (bx, by), (cx, cy) = (points[k] for k in (a, b, c))
+        length = np.hypot(bx - ax, by - ay)
+        obtuse = (ax - cx) * (bx - cx) + (ay - cy) * (by - cy) < 0
+        if obtuse and length > LONG * spacing[c]:
+            new = len(points)
+            points.append(((ax + bx) / 2, (ay + by) / 2))
+            spacing.append(length / 2)
+            owner[new] = owner[a]
+            del apex[a, b]
+            _add(apex, a, new, c)
+            _add(apex, new, b, c)
     return len(points) - before

@@ -79,3 +79,19 @@ def test_sections_covered_twice_are_refused():
     )
     with pytest.raises(SectionError, match="the mesh overlaps itself"):
         check_mesh(mesh)
+
+
+def test_two_sheets_joined_crosswise_are_refused():
+    """No two outline edges touch and all triangles fit, but everything within the inner outline is covered
+    twice: two sheets are cut between the same points and joined crosswise along the cut."""
+    points = [(-1, 0), (1, 0), (0, 0.1), (0, -0.1)]
+    left, right, above, below = range(4)
+    corners = []
+    for size, up, down in ((3, above, below), (6, below, above)):
+        north, west, south, east = (len(points) + k for k in range(4))
+        points += [(0, size), (-size, 0), (0, -size), (size, 0)]
+        corners += [(left, up, north), (up, right, north), (left, south, down), (south, right, down)]
+        corners += [(north, west, left), (west, south, left), (south, east, right), (east, north, right)]
+    mesh = mesh_from_corners(points, corners, [Boundary("wall")], lambda e: np.zeros(len(e)))
+    with pytest.raises(SectionError, match="the mesh overlaps itself around"):
+        check_mesh(mesh)

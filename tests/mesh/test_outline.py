@@ -30,7 +30,7 @@ def length(points):
 
 
 def assert_covers(section, points, holes=()):
-    """The mesh is conforming, holds the exact area and has just the given corners on its outline."""
+    """The mesh is conforming, holds the exact area and has the given corners on its outline."""
     mesh = section.mesh()
     assert_conforming(mesh)
     area = shoelace(points) - sum(map(shoelace, holes))
@@ -38,7 +38,7 @@ def assert_covers(section, points, holes=()):
     assert triangle_areas(mesh).sum() == pytest.approx(area, rel=1e-10)
     assert section.perimeter == pytest.approx(length(points) + sum(map(length, holes)), rel=1e-12)
     given_corners = np.vstack([points, *holes]).astype(float)
-    assert set(map(tuple, mesh.points[mesh.edges[:, 0]])) == set(map(tuple, given_corners))
+    assert set(map(tuple, mesh.points[mesh.edges[:, 0]])) >= set(map(tuple, given_corners))
     assert len(outline_loops(mesh)) == 1 + len(holes)
 
 
@@ -104,8 +104,16 @@ def test_many_sides_have_no_slivers_across():
     section = polygon(ring(200))
     assert_covers(section, ring(200))
     # Without inner points the triangles of corners on a circle have angles of 180/200 degrees.
-    assert smallest_angle(section.mesh()) > math.radians(3)
-    assert len(section.mesh().triangles) < 1500
+    assert smallest_angle(section.mesh()) > math.radians(8)
+    assert len(section.mesh().triangles) < 1000
+
+
+def test_long_sides_are_split_where_they_face_short_ones():
+    comb = [(0, 0), (40, 0), *((40 - k, 3 + k % 2) for k in range(41))]
+    mesh = polygon(comb).mesh()
+    base = mesh.edges[(mesh.points[mesh.edges[:, :2]][..., 1] == 0).all(axis=1)]
+    assert 6 <= len(base) <= 40
+    assert smallest_angle(mesh) > math.radians(7)
 
 
 def test_few_sides_have_no_inner_points():
@@ -113,8 +121,16 @@ def test_few_sides_have_no_inner_points():
     assert len(polygon([(0, 0), (1000, 0), (1000, 1), (0, 1)]).mesh().triangles) == 2
 
 
-def test_inner_sides_are_delaunay():
-    mesh = polygon(ring(30), [ring(7, 0.3, (0.3, 0.1))]).mesh()
+@pytest.mark.parametrize(
+    ("points", "holes"),
+    [
+        (ring(30), [ring(7, 0.3, (0.3, 0.1))]),
+        ([(0, 0), (9, 0), (9, 1), (5, 2), (9, 3), (9, 4), (0, 4), (2, 3)], []),
+        ([(x, (x - 5) ** 2 / 20) for x in range(11)] + [(5, 4)], []),
+    ],
+)
+def test_inner_sides_are_delaunay(points, holes):
+    mesh = polygon(points, holes).mesh()
     opposite = {}
     for a, b, c in mesh.triangles[:, :3].tolist():
         for p, q, r in ((a, b, c), (b, c, a), (c, a, b)):
