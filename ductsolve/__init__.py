@@ -47,7 +47,14 @@ def __getattr__(name):
         raise AttributeError(f"module 'ductsolve' has no attribute {name!r}")
     value = getattr(importlib.import_module(_HOME[name]), name)
     globals()[name] = value
+    if name in ("DuctFlow", "solve"):
+        importlib.import_module("ductsolve.solver.flow").DuctFlow._repr_html_ = _show_in_notebook
     return value
+
+
+def _show_in_notebook(flow):
+    """The flow as a table with its picture; drawing is loaded only when a notebook asks for it."""
+    return importlib.import_module("ductsolve.app.notebook").html(flow)
 
 
 def __dir__():

@@ -41,7 +41,15 @@ def cli() -> None:
     show_default=True,
     help="Newton, or Picard iteration on the apparent viscosity (slower, for comparison).",
 )
-def solve(case: Path, out: Path | None, accuracy: str | None, no_pictures: bool, method: str) -> int:
+@click.option(
+    "--triangles",
+    type=click.IntRange(min=1),
+    metavar="NUMBER",
+    help="Stop refining beyond so many triangles. [default: 60000]",
+)
+def solve(
+    case: Path, out: Path | None, accuracy: str | None, no_pictures: bool, method: str, triangles: int | None
+) -> int:
     """Solve the case file CASE: flow rate from pressure gradient, or the reverse.
 
     Prints the answer with its guaranteed bracket. With --out FOLDER it also writes result.json,
@@ -53,18 +61,18 @@ def solve(case: Path, out: Path | None, accuracy: str | None, no_pictures: bool,
               3: answered, but not to the accuracy asked.
     """
     from ductsolve.app import folder, job, terminal
-    from ductsolve.app.writing import file_names, write_files
+    from ductsolve.app.writing import file_names, files_block, write_files
 
-    names = file_names(pictures=not no_pictures)
-    with folder.staged(out, names) if out else nullcontext() as stage:
+    pictures = not no_pictures
+    with folder.staged(out, file_names(pictures)) if out else nullcontext() as stage:
         with terminal.progress_on(sys.stderr) as progress:
-            outcome = job.run(case, accuracy=accuracy, method=method, progress=progress)
+            outcome = job.run(case, accuracy, method, triangles, progress)
         if stage:
-            write_files(outcome, stage, pictures=not no_pictures)
+            write_files(outcome, stage, pictures)
     if not sys.stdout.isatty():  # the text on the terminal has them too
         for warning in outcome.warnings:
             _say(f"ductsolve: warning: {warning}", err=True)
-    _say(terminal.report_of(outcome, out, names))
+    _say(terminal.report_of(outcome, files_block(out, pictures) if out else None))
     return SUCCESS if outcome.settled else FELL_SHORT
 
 

@@ -9,12 +9,14 @@ from __future__ import annotations
 import numpy as np
 from matplotlib.colors import ListedColormap
 
-INK, MESH, HATCH = "#1d2733", "#8a949e", "#5b4630"
+INK, MESH, HATCH = "#1d2733", "#8a949e", "#e8923a"
 STEPS = 256
 LIGHTEST, DARKEST = 0.97, 0.33
 
 # OKLab to linear sRGB by way of the cone responses.
-_CONES = np.array([[1, 0.3963377774, 0.2158037573], [1, -0.1055613458, -0.0638541728], [1, -0.0894841775, -1.2914855480]])
+_CONES = np.array(
+    [[1, 0.3963377774, 0.2158037573], [1, -0.1055613458, -0.0638541728], [1, -0.0894841775, -1.2914855480]]
+)
 _RGB = np.array(
     [
         [4.0767416621, -3.3077115913, 0.2309699292],

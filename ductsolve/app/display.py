@@ -1,4 +1,4 @@
-"""Numbers and quantities as text: rounded so that a guaranteed bound stays one, in SI and as people read it."""
+"""Numbers and quantities as text, in SI and as people read them; guaranteed bounds are rounded outward."""
 
 from __future__ import annotations
 
@@ -94,7 +94,7 @@ class Display:
         typical: float | None = None,
         padded: bool = False,
     ) -> tuple[str, str]:
-        """Texts of a value in SI and in the unit that suits it (or ``typical``); the second empty if the same."""
+        """Texts of a value in SI and in the unit that suits it or ``typical``; the second may be empty."""
         if not math.isfinite(value):
             return figures(value), ""
         si = f"{figures(value, digits, rounding, padded)} {SI[quantity][0]}"

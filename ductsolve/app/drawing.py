@@ -5,13 +5,14 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.spatial import cKDTree
 
-from ductsolve.mesh.loops import outline_loops
 from ductsolve.mesh.triangles import SIDES, Mesh, edge_points
+from ductsolve.solver.flow import DuctFlow
 from ductsolve.solver.quadratic import corner_rule
 
 SAME_PLACE = 1e-9  # of the section's size
-ENOUGH_TRIANGLES = 12_000  # for a smooth picture of a page's width
+MOST_TRIANGLES = 24_000  # more do not show in a picture of a page's width
 SIDE_SAMPLES = np.linspace(0, 1, 9)
 
 
@@ -39,7 +40,7 @@ class Drawing:
 def drawing(mesh: Mesh) -> Drawing:
     """Cut every six-node triangle of a mesh into equal parts."""
     count = len(mesh.triangles)
-    level = 1 + sum(count * 4**k < ENOUGH_TRIANGLES for k in (1, 2))
+    level = next(k for k in (3, 2, 1) if k == 1 or count * 4**k <= MOST_TRIANGLES)
     rule, parts = corner_rule(level), _parts(2**level)
     local = len(rule.points)
     weights = np.tile(rule.values, (count, 1))
@@ -61,9 +62,12 @@ def _parts(n):
     return np.array(upright + inverted)
 
 
-def outlines(mesh: Mesh) -> list[np.ndarray]:
-    """Closed outlines as points (n, 2), walked with the section on the left."""
-    return [_sampled(mesh.points[mesh.edges[loop]]).reshape(-1, 2) for loop in outline_loops(mesh)]
+def wall_pieces(flow: DuctFlow) -> np.ndarray:
+    """Pieces of wall (n, k, 2) in the order of the flow's wall shear; they halve the outline edges."""
+    mesh, half = flow.mesh, len(SIDE_SAMPLES) // 2
+    sampled = _sampled(mesh.points[mesh.wall_edges])
+    pieces = np.concatenate([sampled[:, : half + 1], sampled[:, half:]])
+    return pieces[cKDTree(pieces[:, half // 2]).query(flow.wall_shear.position)[1]]
 
 
 def mesh_lines(mesh: Mesh) -> np.ndarray:

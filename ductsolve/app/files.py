@@ -88,6 +88,8 @@ def _wall(flow):
     wall = flow.wall_shear
     (smallest, smallest_at), (largest, largest_at) = wall.smallest, wall.largest_away
     unbounded = bool(len(wall.corners))
+    if flow.flow_rate <= 0:
+        return {"min": None, "mean": wall.mean, "max": None, "why_not": "not determined while nothing flows"}
     return {
         "min": smallest,
         "min_position": smallest_at,
@@ -117,13 +119,17 @@ def _reynolds(outcome):
         why = "no density given" if outcome.case.density is None else "nothing flows"
         return {"generalised": None, "friction": None, "why_not": why}
     generalised, friction, limits = REYNOLDS
-    law = found.law
+    law = found.law and {
+        "index": found.law.index,
+        "consistency": found.law.consistency,
+        "tangent": not found.law.whole_curve,
+    }
     return {
         "generalised": found.generalised,
         "generalised_definition": f"{generalised} Kozicki, Chou and Tiu 1966.",
         "friction": found.friction,
         "friction_definition": friction,
-        "power_law": law and {"index": law.index, "consistency": law.consistency, "tangent": not law.whole_curve},
+        "power_law": law,
         "shape_factors": {"a": found.factors.a, "b": found.factors.b},
         "laminar_limits": {LIMITS[rule]: limit for rule, limit in found.limits.items()},
         "laminar_limits_definition": limits,

@@ -16,8 +16,9 @@ from ductsolve.errors import DuctsolveWarning
 from ductsolve.post.factors import peak_velocity
 from ductsolve.post.regime import Outlook, Regime, regime
 from ductsolve.post.shear import beyond_table
+from ductsolve.solver.duty import half_width
 from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
-from ductsolve.solver.solve import solve
+from ductsolve.solver.solve import TRIANGLE_BUDGET, solve
 
 SETTLED = (Status.ANSWERED, Status.NO_FLOW)
 
@@ -62,23 +63,20 @@ class Outcome:
     def half_width(self) -> float | None:
         """Relative half-width of the guaranteed bracket on the answer, None where it has no upper end."""
         flow = self.flow
-        low, high = flow.pressure_gradient_bracket if self.gradient_wanted else flow.flow_rate_bracket
-        if high == 0:
-            return 0.0
-        return (high - low) / (high + low) if high < float("inf") else None
+        return half_width(flow.pressure_gradient_bracket if self.gradient_wanted else flow.flow_rate_bracket)
 
 
 def run(
     path: str | Path,
-    *,
     accuracy: str | None = None,
     method: str = "newton",
+    triangles: int | None = None,
     progress: Callable[[LevelRecord, float], None] | None = None,
 ) -> Outcome:
     """Read and solve a case.
 
-    ``accuracy`` is text from the command line that overrides the case's; ``progress`` is called with the
-    record of every level and the accuracy asked for.
+    ``accuracy`` is text from the command line that overrides the case's, ``triangles`` the budget of
+    triangles if not the usual one; ``progress`` is called with the record of every level and the accuracy.
     """
     notes: list[str] = []
     with _noted(notes):
@@ -93,6 +91,7 @@ def run(
             flow_rate=case.flow_rate,
             accuracy=case.accuracy,
             method=method,
+            triangle_budget=triangles or TRIANGLE_BUDGET,
             progress=progress and (lambda record: progress(record, case.accuracy)),
         )
         seconds = time.perf_counter() - start

@@ -5,8 +5,8 @@ GUARANTEE = (
     " They follow from a stress that is in exact balance and a velocity that meets the walls;"
     " neither the mesh nor an unfinished iteration can make them wrong, only wide."
     " What is printed is rounded outward.",
-    "Not guaranteed: the best estimate, its estimated error, the velocities, the wall shear stress at a place,"
-    " the fraction that looks unyielded, and whether the flow is laminar.",
+    "Not guaranteed: the best estimate, its estimated error, the velocities,"
+    " the wall shear stress at a place, the fraction that looks unyielded, and whether the flow is laminar.",
     "Supposed: steady, laminar, fully developed and isothermal flow, fluid at rest on the walls,"
     " no elasticity, and the fluid and the section exactly as given."
     " The pressure gradient is what friction takes: the weight of the fluid is not in it.",
@@ -46,4 +46,8 @@ REYNOLDS = (
     "Limits for the generalised number: Mishra and Tripathi 2100 (4n + 2)(5n + 3) / [3 (3n + 1)^2];"
     " Ryan and Johnson 6464 n (n + 2)^((n + 2)/(n + 1)) / (3n + 1)^2. They were found for pipes;"
     " in other sections, and at a yield stress, they are a guide only.",
+)
+HISTORY = (
+    "The gap is the relative distance between the two bounds on the potential of the flow, from which the"
+    " bracket on the answer follows; the mesh is refined where it is largest."
 )

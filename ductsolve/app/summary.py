@@ -14,6 +14,7 @@ from ductsolve.solver.flow import DuctFlow, Status
 from ductsolve.solver.wall import CORNER_DISTANCE
 
 MOST_CORNERS = 3  # re-entrant corners named one by one
+UNIFORM = 5e-4  # of the mean: a wall shear stress that varies less shows the same four digits everywhere
 
 
 class Row(NamedTuple):
@@ -73,7 +74,7 @@ def extent_of(flow: DuctFlow) -> float:
 def warning_block(outcome: Outcome) -> Block:
     """Warnings, and an answer that falls short."""
     short = () if outcome.settled else (f"Not the accuracy asked. {outcome.flow.status.value}.",)
-    return Block("warnings", notes=(*short, *outcome.warnings))
+    return Block("warnings", notes=tuple(text[0].upper() + text[1:] for text in (*short, *outcome.warnings)))
 
 
 def input_block(outcome: Outcome) -> Block:
@@ -104,7 +105,7 @@ def answer_block(outcome: Outcome, display: Display) -> Block:
     else:
         rows += _wanted_rows(outcome, display, "flow_rate") + _accuracy_rows(outcome)
         rows += _given_gradient_rows(outcome, display)
-    return Block("answer", tuple(rows), ("in SI units", "as read"))
+    return Block("answer", tuple(rows), ("in SI units", "in other units"))
 
 
 def _no_flow_rows(outcome, display):
@@ -183,6 +184,9 @@ def wall_block(flow: DuctFlow, display: Display) -> Block:
     if flow.flow_rate <= 0:
         rows = (Row("mean", display.both(wall.mean, "stress", 4)),)
         return Block("wall shear stress", rows, notes=(reading.MEAN_STRESS, reading.STRESS_AT_REST))
+    if wall.stress.max() - wall.min < UNIFORM * wall.mean:
+        rows = (Row("everywhere", display.both(wall.mean, "stress", 4)),)
+        return Block("wall shear stress", rows, notes=(reading.MEAN_STRESS,))
     rows = [
         *_stress_rows("smallest", *wall.smallest, wall, display),
         Row("mean", display.both(wall.mean, "stress", 4)),
@@ -232,14 +236,15 @@ def regime_block(outcome: Outcome) -> Block:
     if outcome.case.density is None:
         return Block(title, (Row("Reynolds number", ("not worked out: no density given",)),))
     if outcome.regime is None:
-        return Block(title, (Row("Reynolds number", ("0: nothing flows",)),))
+        return Block(title, (Row("Reynolds number", ("0: nothing flows, by the best estimate",)),))
     found = outcome.regime
     factors = f"a = {figures(found.factors.a, 3)}, b = {figures(found.factors.b, 3)}"
     if found.law is None:
         rows = [Row("generalised", ("not worked out", "mean wall shear stress not above the yield stress"))]
     else:
         n = figures(found.law.index, 3)
-        law = f"n = {n}, K = {figures(found.law.consistency, 3)} Pa.s^{n}"
+        unit = "Pa.s" if n == "1" else f"Pa.s^{n}"
+        law = f"n = {n}, K = {figures(found.law.consistency, 3)} {unit}"
         whose = "the fluid's own" if found.law.whole_curve else "tangent at the mean wall shear stress"
         rows = [
             Row("generalised", (figures(found.generalised, 3), "Kozicki, Chou and Tiu 1966, see below")),
@@ -294,3 +299,21 @@ def work_block(outcome: Outcome) -> Block:
         Row("time", (f"{figures(outcome.seconds, 2)} s",)),
     )
     return Block("computation", rows)
+
+
+def history_block(flow: DuctFlow) -> Block:
+    """How the bracket closed in from level to level."""
+    rows = tuple(
+        Row(
+            f"level {number}",
+            (
+                str(record.triangles),
+                str(record.stress_steps + record.velocity_steps),
+                percent(record.gap),
+                "not worked out" if record.half_width is None else half_width_text(record.half_width),
+            ),
+        )
+        for number, record in enumerate(flow.history, 1)
+    )
+    header = ("triangles solved", "linear systems", "gap of the potential", "guaranteed")
+    return Block("how the bracket closed in", rows, header, (reading.HISTORY,))

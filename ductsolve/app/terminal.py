@@ -5,7 +5,6 @@ from __future__ import annotations
 import textwrap
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
-from pathlib import Path
 from typing import TYPE_CHECKING, TextIO
 
 from ductsolve import __version__
@@ -21,11 +20,9 @@ WIDEST_LABEL, WIDEST_CELL = 46, 44
 GAP = "   "
 
 
-def report_of(outcome: Outcome, folder: Path | None = None, files: Sequence[str] = ()) -> str:
-    """Everything there is to say about a job, and which files it left where."""
-    blocks = summary(outcome)
-    if folder is not None:
-        blocks.append(Block("files", (Row("written to", (str(folder),)),), notes=(", ".join(files),)))
+def report_of(outcome: Outcome, files: Block | None = None) -> str:
+    """Everything there is to say about a job, and which files it left."""
+    blocks = [*summary(outcome), files] if files else summary(outcome)
     case = outcome.case
     return text_of(case.title, f"ductsolve {__version__}, case file {case.path}", blocks)
 
@@ -48,7 +45,7 @@ def _block(block: Block, label: int, cell: int) -> str:
     head = Row(block.title[0].upper() + block.title[1:], block.header)
     lines = [_line(head, label + 2, cell), *(_line(row, label, cell, "  ") for row in block.rows)]
     for note in block.notes:
-        lines += textwrap.wrap(note, WIDTH, initial_indent="  ", subsequent_indent="  ", break_on_hyphens=False)
+        lines += [f"  {line}" for line in textwrap.wrap(note, WIDTH - 2, break_on_hyphens=False)]
     return "\n".join(lines)
 
 

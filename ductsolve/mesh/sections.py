@@ -57,8 +57,8 @@ def rectangle(width: float, height: float) -> Section:
     """Rectangle centred on the origin, ``width`` along x and ``height`` along y [m]."""
     width, height = _lengths(width=width, height=height)
     walls = (
-        Boundary("right wall"),
-        Boundary("top wall"),
+        Boundary("side wall"),
+        Boundary("top or bottom wall"),
         Boundary("symmetry line x = 0", symmetry=True),
         Boundary("symmetry line y = 0", symmetry=True),
     )
