@@ -106,7 +106,8 @@ def tilted_bracket(iterate: Iterate, bend: Response, goal: float) -> tuple[float
             tilt /= 2
     plus, minus = (_tilted_bound(iterate, fluid, goal) for fluid in fluids)
     low = (1 + 1 / index + 1 / tilt) * iterate.bracket.low - plus / tilt
-    high = minus / tilt - (1 / tilt - 1 - 1 / index) * iterate.bracket.low
+    share = 1 + 1 / index - 1 / tilt  # of the untilted potential in the upper bound, either sign
+    high = minus / tilt + share * (iterate.bracket.high if share > 0 else iterate.bracket.low)
     return max(low, 0.0) / iterate.gradient, high / iterate.gradient
 
 
