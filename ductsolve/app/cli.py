@@ -45,7 +45,7 @@ def cli() -> None:
     "--triangles",
     type=click.IntRange(min=1),
     metavar="NUMBER",
-    help="Stop refining beyond so many triangles. [default: 60000]",
+    help="Stop refining beyond so many triangles, to give up sooner or later than usual.",
 )
 def solve(
     case: Path, out: Path | None, accuracy: str | None, no_pictures: bool, method: str, triangles: int | None
@@ -60,7 +60,7 @@ def solve(
               2: bad input; the reason is in one line.
               3: answered, but not to the accuracy asked.
     """
-    from ductsolve.app import folder, job, terminal
+    from ductsolve.app import folder, job, summary, terminal
     from ductsolve.app.writing import file_names, files_block, write_files
 
     pictures = not no_pictures
@@ -70,8 +70,8 @@ def solve(
         if stage:
             write_files(outcome, stage, pictures)
     if not sys.stdout.isatty():  # the text on the terminal has them too
-        for warning in outcome.warnings:
-            _say(f"ductsolve: warning: {warning}", err=True)
+        for warning in summary.warning_block(outcome).notes:
+            _say(f"ductsolve: {warning}", err=True)
     _say(terminal.report_of(outcome, files_block(out, pictures) if out else None))
     return SUCCESS if outcome.settled else FELL_SHORT
 

@@ -24,20 +24,28 @@ USUAL_DIGITS, MOST_DIGITS = 5, 12
 PLAIN_FROM, PLAIN_BELOW = -4, 7  # powers of ten written out in full
 
 
-def figures(value: float, digits: int = USUAL_DIGITS, rounding: str = NEAREST, padded: bool = False) -> str:
+def figures(
+    value: float | Decimal, digits: int = USUAL_DIGITS, rounding: str = NEAREST, padded: bool = False
+) -> str:
     """Number to so many significant digits, rounded as told, without a power of ten where it stays short.
 
     ``padded`` keeps zeros at the end, which then are significant too.
     """
     if not math.isfinite(value):
         return "without bound" if value > 0 else "unknown"
-    number = Decimal(value)
-    if number:
-        number = number.quantize(Decimal(1).scaleb(number.adjusted() - digits + 1), rounding=rounding)
+    number = _exactly(value)
+    if not number:
+        return "0"
+    number = number.quantize(Decimal(1).scaleb(number.adjusted() - digits + 1), rounding=rounding)
     power, finish = number.adjusted(), str if padded else _trimmed
-    if not number or PLAIN_FROM <= power < PLAIN_BELOW:
+    if PLAIN_FROM <= power < PLAIN_BELOW:
         return finish(f"{number:f}")
     return f"{finish(f'{number.scaleb(-power):f}')}e{power}"
+
+
+def _exactly(value: float | Decimal) -> Decimal:
+    """The number as it is written, so that 0.3 is not rounded down to 0.29999."""
+    return value if isinstance(value, Decimal) else Decimal(repr(float(value)))
 
 
 def percent(share: float, digits: int = 2, rounding: str = NEAREST) -> str:
@@ -99,7 +107,7 @@ class Display:
             return figures(value), ""
         si = f"{figures(value, digits, rounding, padded)} {SI[quantity][0]}"
         unit = self.unit(quantity, value if typical is None else typical)
-        own = f"{figures(value * unit.per_si, digits, rounding, padded)} {unit.unit}"
+        own = f"{figures(_exactly(value) * _exactly(unit.per_si), digits, rounding, padded)} {unit.unit}"
         return si, own if own != si else ""
 
     def bracket(

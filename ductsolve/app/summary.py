@@ -73,7 +73,7 @@ def extent_of(flow: DuctFlow) -> float:
 
 def warning_block(outcome: Outcome) -> Block:
     """Warnings, and an answer that falls short."""
-    short = () if outcome.settled else (f"Not the accuracy asked. {outcome.flow.status.value}.",)
+    short = () if outcome.settled else (f"not the accuracy asked: {outcome.flow.status.value}",)
     return Block("warnings", notes=tuple(text[0].upper() + text[1:] for text in (*short, *outcome.warnings)))
 
 
@@ -135,7 +135,8 @@ def _wanted_rows(outcome, display, quantity, per_unit=1.0, label=""):
     ends = (bracket[0] * per_unit, value, bracket[1] * per_unit)
     low, best, high = display.bracket(*ends, quantity, digits)
     return [
-        Row(f"{label or quantity.replace('_', ' ')}, best estimate", best),
+        Row(label or quantity.replace("_", " "), ()),
+        Row("  best estimate", best),
         Row("  guaranteed between", low),
         Row("  and", high),
     ]

@@ -8,7 +8,7 @@ from contextlib import contextmanager
 from typing import TYPE_CHECKING, TextIO
 
 from ductsolve import __version__
-from ductsolve.app.display import figures, half_width_text, percent
+from ductsolve.app.display import half_width_text, percent
 from ductsolve.app.summary import Block, Row, summary
 
 if TYPE_CHECKING:
@@ -50,9 +50,13 @@ def _block(block: Block, label: int, cell: int) -> str:
 
 
 def _line(row: Row, label: int, cell: int, indent: str = "") -> str:
+    """One row; a lone cell that is long runs on below itself."""
+    start = f"{indent}{row.label:<{label}}{GAP}"
     first, *rest = row.cells or ("",)
-    texts = [f"{indent}{row.label:<{label}}", f"{first:<{cell}}", *rest]
-    return GAP.join(texts).rstrip()
+    if not any(rest):
+        lines = textwrap.wrap(first, max(WIDTH - len(start), cell), break_on_hyphens=False)
+        return (start + f"\n{' ' * len(start)}".join(lines)).rstrip()
+    return f"{start}{first:<{cell}}{GAP}{GAP.join(rest)}".rstrip()
 
 
 @contextmanager
@@ -77,12 +81,12 @@ class Progress:
     def __call__(self, record: LevelRecord, accuracy: float) -> None:
         """Show the record of one level."""
         self.levels += 1
-        known = record.half_width is not None
-        width = half_width_text(record.half_width) if known else "not yet worked out"
-        self._draw(
-            f"level {self.levels}, {record.triangles} triangles: guaranteed {width},"
-            f" asked +/- {percent(accuracy, 4)}; gap {figures(record.gap, 2)}"
-        )
+        if record.half_width is None:
+            state = f"gap {percent(record.gap)}, bracket to come"
+        else:
+            asked = percent(accuracy, 4)
+            state = f"{half_width_text(record.half_width)} guaranteed, +/- {asked} asked"
+        self._draw(f"level {self.levels}, {record.triangles} triangles: {state}")
 
     def clear(self) -> None:
         """Leave an empty line behind."""

@@ -110,7 +110,13 @@ class PotentialBracket:
 
     @property
     def width(self) -> float:
+        """Difference of the bounds [W/m]."""
         return self.high - self.low
+
+    @property
+    def bare(self) -> tuple[float, float]:
+        """Bounds for walls on the mesh edges, to extrapolate from [W/m]."""
+        return self.low + self.wall, self.high - self.wall
 
 
 def potential_bracket(

@@ -96,13 +96,15 @@ class _Duty:
         The estimate extrapolates the bracket of this level and the last to no gap.
         """
         low, high = (self.copies * q for q in homogeneous_bracket(iterate, self.index))
+        bare_low, bare_high = iterate.bracket.bare
         share = 0.5
         if self._before is not None:
-            before = self._before.bracket
-            scale = (self._before.gradient / iterate.gradient) ** (1 + 1 / self.index)
-            closed = before.width / scale - iterate.bracket.width
-            share = (iterate.bracket.low - before.low / scale) / closed if closed > 0 else share
-        estimate = low + min(max(share, 0.0), 1.0) * (high - low)
+            scale = (iterate.gradient / self._before.gradient) ** (1 + 1 / self.index)
+            before_low, before_high = (scale * bound for bound in self._before.bracket.bare)
+            closed = before_high - before_low - (bare_high - bare_low)
+            share = (bare_low - before_low) / closed if closed > 0 else share
+        potential = bare_low + min(max(share, 0.0), 1.0) * (bare_high - bare_low)
+        estimate = self.copies * potential * (1 + 1 / self.index) / iterate.gradient
         error = (high - low) / (2 * estimate) if estimate > 0 else 1.0
         if self._estimate is not None and estimate > 0:
             error = min(error, max(abs(estimate / self._estimate - 1), error / 10))

@@ -20,6 +20,7 @@ METHODS = ("newton", "picard")
 NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
 TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
 FAINT_SHARE = 0.25
+SETTLED = 0.6  # of the accuracy: largest estimated error of the best estimate
 FEWEST_LEVELS = 2  # the best estimate of a power law looks back one level
 
 
@@ -86,11 +87,12 @@ def solve(
 
 
 def _reached(answer: Answer, accuracy: float, levels: int) -> bool:
-    """Whether the bracket is narrow enough, with a level before it to extrapolate from."""
+    """Whether the bracket is narrow enough and the best estimate in it has come to rest."""
     width = answer.half_width
     if width is None or width > accuracy:
         return False
-    return levels >= FEWEST_LEVELS or width < accuracy / 10
+    settled = levels >= FEWEST_LEVELS and answer.error <= SETTLED * accuracy
+    return settled or width < accuracy / 10
 
 
 def _record(answer: Answer) -> LevelRecord:
