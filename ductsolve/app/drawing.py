@@ -5,7 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.spatial import cKDTree
 
 from ductsolve.mesh.triangles import SIDES, Mesh, edge_points
 from ductsolve.solver.flow import DuctFlow
@@ -63,11 +62,8 @@ def _parts(n):
 
 
 def wall_pieces(flow: DuctFlow) -> np.ndarray:
-    """Pieces of wall (n, k, 2) in the order of the flow's wall shear; they halve the outline edges."""
-    mesh, half = flow.mesh, len(SIDE_SAMPLES) // 2
-    sampled = _sampled(mesh.points[mesh.wall_edges])
-    pieces = np.concatenate([sampled[:, : half + 1], sampled[:, half:]])
-    return pieces[cKDTree(pieces[:, half // 2]).query(flow.wall_shear.position)[1]]
+    """Wall edges (n, k, 2) in the order of the flow's wall shear."""
+    return _sampled(flow.mesh.points[flow.mesh.edges[flow.wall_shear.edge]])
 
 
 def mesh_lines(mesh: Mesh) -> np.ndarray:

@@ -41,7 +41,7 @@ def result(outcome: Outcome) -> dict[str, Any]:
         "estimated_error": flow.estimated_error,
         **_drop(outcome),
         "mean_velocity": flow.mean_velocity,
-        "max_velocity": outcome.peak,
+        "max_velocity": outcome.flow.max_velocity,
         "wall_shear": _wall(flow),
         "plug": _plug(flow),
         "reynolds": _reynolds(outcome),

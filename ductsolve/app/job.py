@@ -13,9 +13,7 @@ from ductsolve.app.case import Case, read_case
 from ductsolve.app.schema import Input
 from ductsolve.app.units import parse_share
 from ductsolve.errors import DuctsolveWarning
-from ductsolve.post.factors import peak_velocity
 from ductsolve.post.regime import Outlook, Regime, regime
-from ductsolve.post.shear import beyond_table
 from ductsolve.solver.duty import half_width
 from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
 from ductsolve.solver.solve import TRIANGLE_BUDGET, solve
@@ -32,7 +30,6 @@ class Outcome:
     case : as read, with what the command line overrode
     flow : the answer
     regime : Reynolds numbers, None without a density or where nothing flows
-    peak : largest velocity [m/s]
     seconds : it took to solve
     warnings : what the user should know, a sentence each
     """
@@ -40,7 +37,6 @@ class Outcome:
     case: Case
     flow: DuctFlow
     regime: Regime | None
-    peak: float
     seconds: float
     warnings: tuple[str, ...]
 
@@ -101,7 +97,6 @@ def run(
         case=case,
         flow=flow,
         regime=outlook,
-        peak=peak_velocity(flow),
         seconds=seconds,
         warnings=tuple(dict.fromkeys([*notes, *_findings(flow, outlook)])),
     )
@@ -121,9 +116,6 @@ def _with_accuracy(case: Case, text: str) -> Case:
 
 def _findings(flow: DuctFlow, outlook: Regime | None) -> Iterator[str]:
     """What the answer itself gives cause to warn of."""
-    beyond = beyond_table(flow)
-    if beyond:
-        yield f"{beyond}; what lies outside is extrapolated at the end slopes"
     if outlook is not None and outlook.outlook is not Outlook.LAMINAR:
         yield f"{outlook.outlook.value}: every number here supposes that it is laminar"
 

@@ -6,7 +6,6 @@ from ductsolve.app import plots
 from ductsolve.app.display import Display, digits_for, half_width_text, percent
 from ductsolve.app.markup import picture_html, table_html
 from ductsolve.app.summary import Row, extent_of
-from ductsolve.post.factors import peak_velocity
 from ductsolve.solver.duty import half_width
 from ductsolve.solver.flow import DuctFlow
 
@@ -32,7 +31,7 @@ def _rows(flow: DuctFlow, display: Display) -> list[Row]:
         *_quantity("pressure_gradient", flow, display),
         *_quantity("flow_rate", flow, display),
         Row("mean velocity", (_read(display, flow.mean_velocity, "velocity"),)),
-        Row("largest velocity", (_read(display, peak_velocity(flow), "velocity"),)),
+        Row("largest velocity", (_read(display, flow.max_velocity, "velocity"),)),
         Row("wall shear stress, mean", (_read(display, wall.mean, "stress"),)),
         Row("wall shear stress, largest", (largest,)),
         Row("looks unyielded", (f"{percent(flow.plug_fraction, 3)} of the area",)),

@@ -18,7 +18,7 @@ CAUTIONS = (
 
 MEAN_STRESS = "The mean is pressure gradient x hydraulic diameter / 4, whatever the fluid."
 WALL_PIECES = (
-    "Smallest and largest are means over one short piece of wall; in a sharp outward corner"
+    "Smallest and largest are means over one edge of the mesh; in a sharp outward corner"
     " the exact stress falls to zero."
 )
 REENTRANT = (

@@ -98,7 +98,7 @@ def _shown(block, outcome, pictures):
         return block_html(block)
     display = display_of(outcome)
     words = words.format(
-        velocity=display.read(outcome.peak, "velocity", 4),
+        velocity=display.read(outcome.flow.max_velocity, "velocity", 4),
         stress=display.read(outcome.flow.wall_shear.mean, "stress", 4),
         section=outcome.flow.section.name,
     )

@@ -173,8 +173,8 @@ def velocity_block(outcome: Outcome, display: Display) -> Block:
     mean = outcome.flow.mean_velocity
     rows = (
         Row("mean", display.both(mean, "velocity", 4)),
-        Row("largest", display.both(outcome.peak, "velocity", 4)),
-        Row("largest over mean", (figures(outcome.peak / mean, 4),)),
+        Row("largest", display.both(outcome.flow.max_velocity, "velocity", 4)),
+        Row("largest over mean", (figures(outcome.flow.max_velocity / mean, 4),)),
     )
     return Block("velocity", rows)
 

@@ -3,17 +3,19 @@
 from __future__ import annotations
 
 import math
+import warnings
 from collections.abc import Callable
 
 import numpy as np
 
-from ductsolve.errors import DutyError, FluidError, SectionError
+from ductsolve.errors import DuctsolveWarning, DutyError, FluidError, SectionError
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
 from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
 from ductsolve.solver.levels import first_level, refine
 from ductsolve.solver.startup import LimitLevel, starts
+from ductsolve.solver.working import beyond_table
 
 TRIANGLE_BUDGET = 20_000
 METHODS = ("newton", "picard")
@@ -50,6 +52,11 @@ def solve(
     triangle_budget : refinement stops beyond this many triangles in the part that is solved
     progress : called with the record of every level
 
+    Warns
+    -----
+    DuctsolveWarning
+        when a tabulated flow curve is used outside its table, and how far
+
     Raises
     ------
     DutyError
@@ -73,7 +80,7 @@ def solve(
             progress(history[-1])
         if answer.iterate.bracket.low > 0:
             moves = None
-        elif moves is None and pressure_gradient is not None:
+        elif moves is None and fluid.yield_stress > 0 and pressure_gradient is not None:
             moves, limit = starts(section, fluid, duty.gradient)
             if moves is False:
                 return _rest(duty, limit, history)
@@ -116,7 +123,7 @@ def _flow(duty, answer: Answer, status: Status, history) -> DuctFlow:
         gradient, rate = answer.estimate, duty.flow_rate
         gradients, rates = answer.bracket, (rate, rate)
     computed = duty.copies * iterate.flow
-    return DuctFlow(
+    flow = DuctFlow(
         section=duty.section,
         fluid=duty.fluid,
         pressure_gradient=gradient,
@@ -133,6 +140,10 @@ def _flow(duty, answer: Answer, status: Status, history) -> DuctFlow:
         solved_gradient=iterate.gradient,
         gap=duty.copies * iterate.bracket.width,
     )
+    beyond = beyond_table(flow)
+    if beyond:
+        warnings.warn(beyond, DuctsolveWarning, stacklevel=3)
+    return flow
 
 
 def _rest(duty, limit: LimitLevel, history) -> DuctFlow:

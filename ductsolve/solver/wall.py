@@ -20,11 +20,12 @@ CORNER_DISTANCE = 0.05
 
 @dataclass(frozen=True, eq=False)
 class WallShear:
-    """Mean shear stress on short pieces of wall, in order along each outline loop, fluid on the left.
+    """Mean shear stress on each wall edge of the mesh, in order along each outline loop, fluid on the left.
 
     Attributes
     ----------
-    position : (n, 2) middle of each piece [m]
+    edge : (n,) row of the edge among those of the whole section's mesh
+    position : (n, 2) middle of each edge [m]
     stress : (n,) mean shear stress of the fluid on it [Pa]; sum(stress * length) = gradient x area
     length : (n,) its length [m]
     loop : (n,) outline loop it lies on, 0 the outer one
@@ -34,6 +35,7 @@ class WallShear:
     near_corner : (n,) mask of pieces close to one
     """
 
+    edge: np.ndarray
     position: np.ndarray
     stress: np.ndarray
     length: np.ndarray
@@ -74,43 +76,36 @@ class WallShear:
 def wall_shear(section: Section, level: Level, whole: Whole, psi: np.ndarray, gradient: float) -> WallShear:
     """Wall shear of the whole section from the stress function on the part that is solved."""
     mesh, forces = whole.mesh, level.wall_forces
-    force = _copied(forces(psi), whole.mirrored)
-    length = _copied(forces.lengths, whole.mirrored)
-    loops = outline_loops(mesh)
+    loops = [loop[~mesh.symmetry_edges[loop]] for loop in outline_loops(mesh)]
     order = np.concatenate(loops)
-    halves = mesh.points[mesh.edges[order]]
-    start, end, middle = halves[:, 0], halves[:, 1], halves[:, 2]
-    position = np.stack(
-        [0.375 * start + 0.75 * middle - 0.125 * end, 0.375 * end + 0.75 * middle - 0.125 * start]
-    )
-    position = position.transpose(1, 0, 2).reshape(-1, 2)
-    corners = np.vstack([_reentrant(mesh.points[mesh.edges[loop]]) for loop in loops])
+    row = np.cumsum(~mesh.symmetry_edges)[order] - 1  # among the wall edges alone
+    length = np.tile(forces.lengths.sum(axis=1), len(section.copies))[row]
+    force = np.tile(forces(psi).sum(axis=1), len(section.copies))[row]
+    position = mesh.points[mesh.edges[order, 2]]
+    corners = np.vstack([_reentrant(mesh, loop) for loop in loops])
     away = CORNER_DISTANCE * section.hydraulic_diameter
     return WallShear(
+        edge=order,
         position=position,
-        stress=gradient * (force[order] / length[order]).ravel(),
-        length=length[order].ravel(),
-        loop=np.repeat(np.arange(len(loops)), [2 * len(loop) for loop in loops]),
-        wall=np.repeat(mesh.edge_boundary[order], 2),
+        stress=gradient * force / length,
+        length=length,
+        loop=np.repeat(np.arange(len(loops)), [len(loop) for loop in loops]),
+        wall=mesh.edge_boundary[order],
         names=tuple(boundary.name for boundary in mesh.boundaries),
         corners=corners,
         near_corner=_distance(position, corners) < away,
     )
 
 
-def _copied(halves, mirrored):
-    """Values (n, 2) on the halves of the part's wall edges, for all copies."""
-    return np.vstack([halves[:, ::-1] if m else halves for m in mirrored])
-
-
-def _reentrant(edges):
-    """Corners (k, 2) where an ordered loop of parabolic edges (n, 3, 2) turns away from the fluid."""
-    start, end, middle = edges[:, 0], edges[:, 1], edges[:, 2]
+def _reentrant(mesh, loop):
+    """Corners (k, 2) where consecutive wall edges of an ordered loop turn away from the fluid."""
+    start, end, middle = mesh.points[mesh.edges[loop]].transpose(1, 0, 2)
     leaving = 3 * end - 4 * middle + start
     arriving = np.roll(4 * middle - 3 * start - end, -1, axis=0)
     cross = leaving[:, 0] * arriving[:, 1] - leaving[:, 1] * arriving[:, 0]
     turn = np.arctan2(cross, np.sum(leaving * arriving, axis=1))
-    return end[turn < -REENTRANT_TURN]
+    joined = mesh.edges[loop, 1] == np.roll(mesh.edges[loop, 0], -1)
+    return end[joined & (turn < -REENTRANT_TURN)]
 
 
 def _distance(points, corners):

@@ -22,8 +22,7 @@ class Whole:
 
     Attributes
     ----------
-    mesh : all copies joined on the symmetry lines, with walls only
-    mirrored : (n_copies,) whether the copy is a mirror image
+    mesh : all copies joined on the symmetry lines; of these only the lines of an only copy remain
     """
 
     def __init__(self, section: Section, level: Level):
@@ -32,18 +31,18 @@ class Whole:
         points = np.vstack([part.points @ m[:, :2].T + m[:, 2] for m in copies])
         number, first = _joined(points, part, len(copies))
         self._source = first % self._count
-        self.mirrored = np.linalg.det(copies[:, :, :2]) < 0
-        walls = np.flatnonzero(~part.symmetry_edges)
+        mirrored = np.linalg.det(copies[:, :, :2]) < 0
+        kept = np.flatnonzero(~part.symmetry_edges) if len(copies) > 1 else slice(None)
         triangles, edges = [], []
-        for k, mirrored in enumerate(self.mirrored):
+        for k, turned in enumerate(mirrored):
             own = number[k * self._count : (k + 1) * self._count]
-            triangles.append(own[part.triangles[:, MIRRORED] if mirrored else part.triangles])
-            edges.append(own[part.edges[walls][:, [1, 0, 2]] if mirrored else part.edges[walls]])
+            triangles.append(own[part.triangles[:, MIRRORED] if turned else part.triangles])
+            edges.append(own[part.edges[kept][:, [1, 0, 2]] if turned else part.edges[kept]])
         self.mesh = Mesh(
             points[first],
             np.vstack(triangles),
             np.vstack(edges),
-            np.tile(part.edge_boundary[walls], len(copies)),
+            np.tile(part.edge_boundary[kept], len(copies)),
             part.boundaries,
         )
 
