@@ -19,8 +19,13 @@ from ductsolve.solver.quadratic import Elements, corner_rule, gauss, interior, s
 
 Array = np.ndarray
 
-# Triangles on which the two rules differ by more than this part of an equal share of the gap are subdivided.
-NOTICEABLE = 0.02
+# The finer rule errs by less than this many times its difference to the coarser one.
+MARGIN = 4.0
+# Triangles whose margin exceeds this part of an equal share of the gap are subdivided ...
+NOTICEABLE = 0.03
+FEWEST_SHARES = 32  # ... of at least so many shares
+# ... and then err by less than this part of what the subdivision changed (it errs by a 1/16 or less of that).
+REMAINDER = 1 / 4
 SUBDIVISIONS = (1, 3)
 SAFE_SUBDIVISION = 4
 WALL_SAFETY = 2.0  # the first-order price of a wall out of place, doubled
@@ -38,7 +43,7 @@ class Part:
     Attributes
     ----------
     value : (n_triangles,) by the finer rule
-    margin : (n_triangles,) difference to the coarser rule, by which bounds are widened
+    margin : (n_triangles,) what quadrature may have it off by; bounds are widened by it
     """
 
     value: Array
@@ -48,20 +53,21 @@ class Part:
 def _two_rules(level: Level, density, local, rules, chosen=slice(None)) -> Part:
     coarse, fine = (Elements(level.mesh, rule, chosen) for rule in rules)
     value = fine.integral(density(fine, local[chosen]))
-    return Part(value, np.abs(value - coarse.integral(density(coarse, local[chosen]))))
+    return Part(value, MARGIN * np.abs(value - coarse.integral(density(coarse, local[chosen]))))
 
 
 def _sharpened(level: Level, density, local, part: Part, gap: float) -> Part:
-    """The same with triangles subdivided where a kink (a yield surface) spoils the rules."""
+    """The same with triangles subdivided where a kink (a yield surface) or steepness spoils the rules."""
     value, margin = part.value.copy(), part.margin.copy()
-    enough = NOTICEABLE * abs(gap) / len(margin)
+    enough = NOTICEABLE * abs(gap) / max(len(margin), FEWEST_SHARES)
     for depth in SUBDIVISIONS:
         worst = np.flatnonzero(margin > enough)
         if not len(worst):
             break
         rules = [subdivided(rule, depth) for rule in (interior(), gauss(3))]
         finer = _two_rules(level, density, local, rules, worst)
-        value[worst], margin[worst] = finer.value, finer.margin
+        change = np.abs(finer.value - value[worst])
+        value[worst], margin[worst] = finer.value, np.maximum(finer.margin, REMAINDER * change)
     return Part(value, margin)
 
 

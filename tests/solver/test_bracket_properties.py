@@ -15,6 +15,9 @@ from ductsolve.mesh.sections import annulus, circle, ellipse, rectangle
 from ductsolve.rheology.laws import Newtonian
 from ductsolve.solver.solve import solve
 
+# Flow curves are drawn without regard to how far they must reach.
+pytestmark = pytest.mark.filterwarnings("ignore:the flow curve is used")
+
 ACCURACY = decades(-3, -1)
 BUDGET = st.integers(50, 1500)
 QUADRATURE = 1e-8  # what the exact values here are good for
@@ -50,6 +53,15 @@ def test_concentric_annulus(drawn, outer, ratio, accuracy, budget):
     gradient = 4 * stress / (outer * (1 - ratio))
     flow = exact.annulus_flow(fluid, outer, ratio * outer, gradient)
     check_both_ways(annulus(outer, ratio * outer), fluid, gradient, flow, accuracy, budget)
+
+
+@modest(40)
+@given(sheared(largest_share=0.9), ACCURACY, BUDGET)
+def test_slot(drawn, accuracy, budget):
+    """A rectangle a million gaps wide; its ends cost the flow of a few gaps."""
+    fluid, stress = drawn
+    gradient, flow = 2 * stress, 1e6 * exact.slit_flow(fluid, 1.0, 2 * stress)
+    check_both_ways(rectangle(1e6, 1.0), fluid, gradient, flow, accuracy, budget, doubt=1e-5)
 
 
 @modest(30)

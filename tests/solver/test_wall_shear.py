@@ -34,7 +34,7 @@ def test_pieces_follow_each_other_along_each_loop(name):
         step = np.linalg.norm(np.roll(position, -1, axis=0) - position, axis=1)
         reach = half + np.roll(half, -1)
         # Middles of neighbours are half their lengths apart along the wall, less across a corner or arc. On
-        # arcs they are middles of the parameter, a little off in length.
+        # an ellipse they are middles of the parameter, a little off in length.
         assert np.all(step <= 1.02 * reach)
         assert np.all(step >= 0.3 * reach)
 
@@ -66,22 +66,45 @@ def test_walls_are_named(name):
         assert ("outer" in wall) == (loop == 0)
 
 
+def long_wall_stress(height, x):
+    """Newtonian stress on the long wall of a rectangle 1 wide at x from its middle, for a gradient of 1.
+
+    From Boussinesq's (1868) series for the velocity, differentiated.
+    """
+    odd, half = np.arange(1, 400, 2)[:, None], height / 2
+    decay = np.exp(odd * np.pi * (np.abs(x) - 0.5) / height) * (
+        1 + np.exp(-2 * odd * np.pi * np.abs(x) / height)
+    )
+    decay /= 1 + np.exp(-odd * np.pi / height)
+    return 8 * half / np.pi**2 * ((1 - decay) / odd**2).sum(axis=0)
+
+
 @pytest.mark.parametrize("aspect", [1.0, 0.75, 0.5, 0.25, 0.1])
-def test_rectangle_newtonian(aspect):
-    """Largest at the middle of the long sides, by Boussinesq's (1868) series; 0 in the corners."""
+def test_along_the_long_wall_of_a_rectangle(aspect):
+    shear = shear_of(rectangle(1.0, aspect), Newtonian(1.0), gradient=1.0, accuracy=1e-3)
+    top = shear.position[:, 1] > 0.499 * aspect
+    gauss, weight = np.polynomial.legendre.leggauss(8)
+    for x, length, stress in zip(shear.position[top, 0], shear.length[top], shear.stress[top], strict=True):
+        known = long_wall_stress(aspect, x + length / 2 * gauss) @ weight / 2
+        assert stress == pytest.approx(known, abs=5e-3 * shear.mean)
+
+
+@pytest.mark.parametrize("aspect", [1.0, 0.75, 0.5, 0.25, 0.1])
+def test_extremes_in_a_rectangle(aspect):
+    """Largest at the middle of the long sides, by Boussinesq's (1868) series; small in the corners."""
     found = row("A1_rect_newtonian", aspect=aspect)
     shear = shear_of(rectangle(1.0, aspect), Newtonian(1.0), accuracy=1e-5)
     stress, place = shear.largest_away
     assert shear.max == stress
-    # Values are means over pieces of wall, the middle one a few hundredths of the side long.
-    assert stress / shear.mean == pytest.approx(found["taumax_over_taumean_long"], rel=3e-3)
+    # Values are means over edges, the middle one of which is up to an eighth of the side long.
+    assert stress / shear.mean == pytest.approx(found["taumax_over_taumean_long"], rel=5e-3)
     assert np.abs(place[1]) == pytest.approx(aspect / 2) or aspect == 1.0
     assert np.abs(place).min() < 0.1 or aspect == 0.1  # where the stress hardly varies along the middle
     short = np.abs(shear.position[:, 0]) > 0.4999
     at_middle = np.argmin(np.abs(shear.position[short][:, 1]))
     known = found["tau_short_centre_over_taumean"]
-    assert shear.stress[short][at_middle] / shear.mean == pytest.approx(known, rel=3e-3)
-    assert 0 < shear.min < 0.2 * shear.mean
+    assert shear.stress[short][at_middle] / shear.mean == pytest.approx(known, rel=5e-3)
+    assert 0 < shear.min < 0.3 * shear.mean
 
 
 def annulus_stresses(ratio, fluid):
@@ -131,7 +154,7 @@ RE_ENTRANT = {
 def test_re_entrant_corners_are_said_to_be_unbounded(name):
     section, corners = RE_ENTRANT[name]
     largest = []
-    for accuracy in (0.03, 0.003):
+    for accuracy in (1e-3, 1e-4):
         shear = shear_of(section, Newtonian(1.0), accuracy=accuracy)
         assert shear.max == np.inf
         assert sorted(map(tuple, np.round(shear.corners, 12))) == corners
@@ -140,8 +163,8 @@ def test_re_entrant_corners_are_said_to_be_unbounded(name):
         assert np.linalg.norm(place - shear.corners, axis=1).min() >= 0.05 * section.hydraulic_diameter
         largest.append((stress, shear.stress.max()))
     # Away from the corner the largest stress has settled; at it the computed one grows with the mesh.
-    assert largest[1][0] == pytest.approx(largest[0][0], rel=0.1)
-    assert largest[1][1] > 1.05 * largest[0][1]
+    assert largest[1][0] == pytest.approx(largest[0][0], rel=0.05)
+    assert largest[1][1] > 1.3 * largest[0][1]
 
 
 @pytest.mark.parametrize("name", ["square", "triangle", "circle", "concentric annulus"])
