@@ -34,6 +34,7 @@ FIRST_GOAL = 1e-2  # relative gap to hope for on the first level
 GOAL_DROP = 8.0  # how much the gap is hoped to fall from level to level
 PROMISING = 1.5  # brackets are worked out once they should come this close to the accuracy
 UNKNOWN: Bracket = (0.0, math.inf)
+MOVE_LEFT = 0.4  # of an estimate's last move: what it may still move
 MOST_CORRECTIONS = 30
 CEILING_STEPS = (0.003, 0.01, 0.03, 0.1, 0.3)
 FIRST_SLACK = 0.01
@@ -91,7 +92,7 @@ class _Duty:
         self.goal = min(max(wanted, reached / GOAL_DROP), FIRST_GOAL)
 
     def _power_law(self, iterate: Iterate) -> tuple[float, Bracket, float]:
-        """Estimate, bracket and estimated error of the flow rate of a power law.
+        """Estimate, bracket and its relative half-width of the flow rate of a power law.
 
         The estimate extrapolates the bracket of this level and the last to no gap.
         """
@@ -105,11 +106,20 @@ class _Duty:
             share = (bare_low - before_low) / closed if closed > 0 else share
         potential = bare_low + min(max(share, 0.0), 1.0) * (bare_high - bare_low)
         estimate = self.copies * potential * (1 + 1 / self.index) / iterate.gradient
+        self._before = iterate
         error = (high - low) / (2 * estimate) if estimate > 0 else 1.0
-        if self._estimate is not None and estimate > 0:
-            error = min(error, max(abs(estimate / self._estimate - 1), error / 10))
-        self._before, self._estimate = iterate, estimate
         return estimate, (max(low, 0.0), high), error
+
+    def _settled(self, estimate: float, spread: float) -> float:
+        """Estimated relative error of an estimate: a part of how far it moved from the level before.
+
+        Gaps fall about fourfold a level. Between a third of ``spread``, what is left open by bounds or
+        by the other field, and all of it; all of it on the first level.
+        """
+        before, self._estimate = self._estimate, estimate
+        if before is None or estimate <= 0 or not math.isfinite(estimate):
+            return spread
+        return float(np.clip(MOVE_LEFT * abs(before / estimate - 1), spread / 3, spread))
 
 
 def stress_flow(iterate: Iterate) -> float:
@@ -120,8 +130,7 @@ def stress_flow(iterate: Iterate) -> float:
 
 
 def _general_estimate(iterate: Iterate) -> tuple[float, float]:
-    """Flow rate of the part by the stress, and its estimated relative error: half the difference from
-    the velocity's."""
+    """Flow rate of the part by the stress, and half its relative difference from the velocity's."""
     by_stress, by_velocity = stress_flow(iterate), iterate.flow
     if by_stress <= 0:
         return by_velocity, 1.0
@@ -139,9 +148,9 @@ class FlowRateWanted(_Duty):
         """Answer on one level; ``final`` works the bracket out however wide it will be."""
         iterate = self._relax(level, psi, self.gradient)
         if self.index is not None:
-            estimate, bracket, error = self._power_law(iterate)
+            estimate, bracket, spread = self._power_law(iterate)
             self._aim(iterate, 2 * self.accuracy)
-            return Answer(iterate, estimate, bracket, error)
+            return Answer(iterate, estimate, bracket, self._settled(estimate, spread))
         if iterate.flow <= 0:
             self._aim(iterate, 0.0)
             return Answer(iterate, 0.0, self._ceiling(iterate) if final else UNKNOWN, 1.0)
@@ -151,9 +160,10 @@ class FlowRateWanted(_Duty):
         if final or expected_half_width(iterate, bend) <= PROMISING * self.accuracy:
             goal = iterate.bracket.width / iterate.bracket.high
             bracket = tuple(self.copies * q for q in tilted_bracket(iterate, bend, goal))
-        estimate, error = _general_estimate(iterate)
+        estimate, spread = _general_estimate(iterate)
         self._aim(iterate, wanted)
-        return Answer(iterate, float(np.clip(self.copies * estimate, *bracket)), bracket, error)
+        rate = float(np.clip(self.copies * estimate, *bracket))
+        return Answer(iterate, rate, bracket, self._settled(rate, spread))
 
     def undecided(self, answer: Answer) -> Answer:
         """The same answer when nobody can tell whether anything flows."""
@@ -185,7 +195,7 @@ class GradientWanted(_Duty):
         if bend is None:
             self._aim(iterate, 0.0)
             return Answer(iterate, iterate.gradient, UNKNOWN, 1.0)
-        estimate, error = _general_estimate(iterate)
+        estimate, spread = _general_estimate(iterate)
         local = bend.a / (iterate.gradient * iterate.flow)  # d ln Q / d ln G
         tilted, direct = self._expected(iterate, bend)
         self.slack = min(max(SLACK * min(tilted, direct), SLACK * self.accuracy), FIRST_SLACK)
@@ -198,17 +208,18 @@ class GradientWanted(_Duty):
         )
         self._aim(iterate, wanted)
         gradient = iterate.gradient * (self.flow_rate / (self.copies * estimate)) ** (1 / local)
-        return Answer(iterate, float(np.clip(gradient, *bracket)), bracket, error / local)
+        gradient = float(np.clip(gradient, *bracket))
+        return Answer(iterate, gradient, bracket, self._settled(gradient, spread / local))
 
     def _power_law_answer(self, level, psi):
         iterate = self._relax(level, psi, self.gradient)
-        estimate, (low, high), error = self._power_law(iterate)
+        estimate, (low, high), spread = self._power_law(iterate)
         n = self.index
         gradient = self.gradient * (self.flow_rate / estimate) ** n if estimate > 0 else math.inf
         above = self.gradient * (self.flow_rate / low) ** n if low > 0 else math.inf
         below = self.gradient * (self.flow_rate / high) ** n
         self._aim(iterate, 2 * self.accuracy / n)
-        return Answer(iterate, gradient, (below, above), n * error)
+        return Answer(iterate, gradient, (below, above), self._settled(gradient, n * spread))
 
     def _expected(self, iterate, bend):
         """Expected relative half-widths by the two ways."""

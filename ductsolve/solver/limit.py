@@ -17,16 +17,17 @@ from dataclasses import dataclass
 import numpy as np
 
 from ductsolve.solver.fields import Level, curl
-from ductsolve.solver.newton import TINY, curl_transposed, tensor
+from ductsolve.solver.newton import SMALLEST_STEP, SUFFICIENT, TINY, curl_transposed, tensor
 from ductsolve.solver.quadratic import Elements, corner_rule
 from ductsolve.solver.superlevel import PositiveParts, least_ratio
-from ductsolve.solver.system import System
+from ductsolve.solver.system import SingularError, System
 from ductsolve.solver.walls import WallPoints
 
 FIRST_WEIGHT, WEIGHT_GROWTH = 3.0, 3.0
 LAST_WEIGHT = 10.0  # over the accuracy: what the barrier leaves is about its inverse
 SMOOTH_FIELDS = 3  # velocities of the first weights have the smoothest superlevel sets
 WALL_LAYER = 0.1  # of the hydraulic diameter: weight of the wall's constraints against the bulk's
+LEAST_SLACK = 1e-9  # of the limit squared
 START_SLACK = 1.2  # first limit over the largest stress
 MOST_STEPS = 25  # Newton steps a weight
 CENTRED = 1e-2  # decrement, per unit of barrier weight, that counts as centred
@@ -76,9 +77,9 @@ class _Points:
         return limit**2 - bulk[0] ** 2 - bulk[1] ** 2, limit**2 - wall**2
 
     def barrier(self, stress, limit):
-        """- sum of weight x ln(slack); infinite outside."""
+        """- sum of weight x ln(slack); infinite outside and where rounding would lead there."""
         bulk, wall = self.slack(stress, limit)
-        if limit <= 0 or min(bulk.min(), wall.min(initial=np.inf)) <= 0:
+        if limit <= 0 or min(bulk.min(), wall.min(initial=np.inf)) <= LEAST_SLACK * limit**2:
             return np.inf
         return -float((self.bulk.weights * np.log(bulk)).sum() + (self.wall_weights * np.log(wall)).sum())
 
@@ -129,7 +130,10 @@ def _centre(points, psi, limit, weight):
     for _ in range(MOST_STEPS):
         stress = points.stress(psi)
         slope, slope_limit, bend, mixed, bend_limit = _derivatives(points, stress, limit)
-        solve = system.factor(bend)
+        try:
+            solve = system.factor(bend)
+        except SingularError:
+            break
         direct, coupled = system.spread(solve(-slope)), system.spread(solve(mixed))
         step_limit = -(weight + slope_limit + np.sum(mixed * direct)) / (bend_limit - np.sum(mixed * coupled))
         step_psi = direct - step_limit * coupled
@@ -143,10 +147,12 @@ def _centre(points, psi, limit, weight):
             return weight * (limit + t * step_limit) + points.barrier(moved, limit + t * step_limit)
 
         t, start = 1.0, merit(0.0)
-        while t > 1e-9 and not merit(t) <= start - 1e-4 * t * decrement:
+        while t > SMALLEST_STEP and not merit(t) <= start - SUFFICIENT * t * decrement:
             t /= 2
+        if t <= SMALLEST_STEP or not np.isfinite(start):
+            break
         psi, limit = psi + t * step_psi, limit + t * step_limit
-        if decrement < CENTRED * points.total or t <= 1e-9:
+        if decrement < CENTRED * points.total:
             break
     return psi, limit
 

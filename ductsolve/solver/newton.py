@@ -9,6 +9,7 @@ import numpy as np
 
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.fields import Level, curl
+from ductsolve.solver.system import SingularError
 
 Array = np.ndarray
 
@@ -96,7 +97,10 @@ def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop
         size = _size(stress)
         secant, tangent = capped.linearised(gradient * size)
         direction = curl_transposed(stress / np.maximum(size, TINY))
-        solve = system.factor(elements.stiffness(tensor(tangent, secant, direction)))
+        try:
+            solve = system.factor(elements.stiffness(tensor(tangent, secant, direction)))
+        except SingularError:
+            break
         load = -elements.load(curl_transposed(secant * stress))
         change = system.spread(solve(load))
         predicted = gradient**2 * float(np.sum(load * change))
@@ -122,13 +126,13 @@ class Velocity:
     ----------
     local : (n_triangles, 6) velocity [m/s]
     stress : (2, n_triangles, n) stress at the points of assembly it was found with [Pa]
-    solve : function from local loads to the unknowns of the last linearised system
+    solve : function from local loads to the unknowns of the last linearised system; None without one
     steps : linear systems solved
     """
 
     local: Array
     stress: Array
-    solve: Callable[[Array], Array]
+    solve: Callable[[Array], Array] | None
     steps: int
 
 
@@ -141,12 +145,15 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
     """
     elements, system = level.elements, level.velocity_system
     stress = gradient * level.stress(psi)
-    best, most, idle = np.zeros((elements.count, 6)), 0.0, 0
+    best, most, idle, solve = np.zeros((elements.count, 6)), 0.0, 0, None
     for step in range(1, MOST_STEPS + 1):  # noqa: B007
         size = _size(stress)
         secant, tangent = capped.linearised(size)
         viscosity = tensor(1 / tangent, 1 / secant, stress / np.maximum(size, TINY))
-        solve = system.factor(elements.stiffness(viscosity))
+        try:
+            solve = system.factor(elements.stiffness(viscosity))
+        except SingularError:
+            break
         pull = stress * (1 - secant / tangent)  # the rate secant x stress lies along the stress
         velocity = system.spread(solve(gradient * elements.unit_load - elements.load(pull)))
         rate = elements.gradient(velocity)

@@ -22,7 +22,7 @@ METHODS = ("newton", "picard")
 NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
 TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
 FAINT_SHARE = 0.25
-SETTLED = 0.6  # of the accuracy: largest estimated error of the best estimate
+SETTLED = 0.1  # of the accuracy: largest estimated error of the best estimate
 FEWEST_LEVELS = 2  # the best estimate of a power law looks back one level
 
 

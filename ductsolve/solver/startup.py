@@ -82,10 +82,10 @@ def start_up_gradient(section: Section, yield_stress: float, *, accuracy: float 
             break
     reached = found.high - found.low <= accuracy * (found.high + found.low)
     return StartUp(
-        bracket=(found.low * yield_stress, found.high * yield_stress),
+        bracket=(float(found.low * yield_stress), float(found.high * yield_stress)),
         estimate=found.estimate * yield_stress,
         accuracy=accuracy,
-        reached=reached,
+        reached=bool(reached),
         triangles=len(found.level.mesh.triangles),
     )
 

@@ -7,6 +7,10 @@ from scipy import sparse
 from scipy.sparse.linalg import splu
 
 
+class SingularError(ArithmeticError):
+    """A system lost its rank to rounding; whoever iterates keeps what it has."""
+
+
 class System:
     """Unknowns of one field on one mesh.
 
@@ -50,9 +54,12 @@ class System:
         """Factorise local matrices (n_triangles, 36); returns a function from local loads to a solution."""
         values = np.add.reduceat(stiffness.ravel()[self._order], self._starts)
         matrix = sparse.csc_matrix((values, self._indices, self._pointers), shape=(self.size, self.size))
-        solve = splu(
-            matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
-        ).solve
+        try:
+            solve = splu(
+                matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
+            ).solve
+        except RuntimeError as error:
+            raise SingularError(str(error)) from error
         if self.borders is None:
             return lambda load: solve(self.gather(load))
         return self._bordered(stiffness.reshape(-1, 6, 6), solve)
