@@ -82,6 +82,7 @@ class _Duty:
         self.goal = FIRST_GOAL
         self._before: Iterate | None = None
         self._estimate: float | None = None
+        self._move = 0.0
 
     def _relax(self, level: Level, psi, gradient: float) -> Iterate:
         return relax(level, self.fluid, gradient, psi, self.goal, self.picard)
@@ -113,13 +114,15 @@ class _Duty:
     def _settled(self, estimate: float, spread: float) -> float:
         """Estimated relative error of an estimate: a part of how far it moved from the level before.
 
-        Gaps fall about fourfold a level. Between a third of ``spread``, what is left open by bounds or
-        by the other field, and all of it; all of it on the first level.
+        Errors fall about fourfold a level, so a small move counts no less than a quarter of the one before.
+        The result lies between a third of ``spread``, what is left open by bounds or by the other field,
+        and all of it; it is all of it on the first level.
         """
         before, self._estimate = self._estimate, estimate
         if before is None or estimate <= 0 or not math.isfinite(estimate):
             return spread
-        return float(np.clip(MOVE_LEFT * abs(before / estimate - 1), spread / 3, spread))
+        self._move = max(abs(before / estimate - 1), self._move / 4)
+        return float(np.clip(MOVE_LEFT * self._move, spread / 3, spread))
 
 
 def stress_flow(iterate: Iterate) -> float:
