@@ -35,6 +35,7 @@ GOAL_DROP = 8.0  # how much the gap is hoped to fall from level to level
 PROMISING = 1.5  # brackets are worked out once they should come this close to the accuracy
 UNKNOWN: Bracket = (0.0, math.inf)
 MOVE_LEFT = 0.4  # of an estimate's last move: what it may still move
+LEAST_LEFT = 0.4  # of the spread: what it may always still move
 MOST_CORRECTIONS = 30
 CEILING_STEPS = (0.003, 0.01, 0.03, 0.1, 0.3)
 FIRST_SLACK = 0.01
@@ -115,14 +116,14 @@ class _Duty:
         """Estimated relative error of an estimate: a part of how far it moved from the level before.
 
         Errors fall about fourfold a level, so a small move counts no less than a quarter of the one before.
-        The result lies between a third of ``spread``, what is left open by bounds or by the other field,
+        The result lies between ``LEAST_LEFT`` of ``spread``, what is left open by bounds or by the other field,
         and all of it; it is all of it on the first level.
         """
         before, self._estimate = self._estimate, estimate
         if before is None or estimate <= 0 or not math.isfinite(estimate):
             return spread
         self._move = max(abs(before / estimate - 1), self._move / 4)
-        return float(np.clip(MOVE_LEFT * self._move, spread / 3, spread))
+        return float(np.clip(MOVE_LEFT * self._move, LEAST_LEFT * spread, spread))
 
 
 def stress_flow(iterate: Iterate) -> float:
