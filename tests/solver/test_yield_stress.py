@@ -22,7 +22,7 @@ SECTIONS = {
     "square": rectangle(1.0, 1.0),
     "rectangle": rectangle(4.0, 1.0),
     "annulus": annulus(2.0, 1.0),
-    "eccentric annulus": annulus(2.0, 1.0, 0.5),
+    "eccentric annulus": annulus(2.0, 1.0, 0.8),
 }
 LAWS = {"Bingham": Bingham(1.0, 1.0), "Herschel-Bulkley": HerschelBulkley(1.0, 1.0, 0.5)}
 
@@ -46,7 +46,7 @@ def start_up(name):
         "annulus": 4.0,
         "circle": 2.0,
     }
-    return known[name] if name in known else start_up_gradient(SECTIONS[name], 1.0, accuracy=2e-3).estimate
+    return known[name] if name in known else start_up_gradient(SECTIONS[name], 1.0).estimate
 
 
 @cache
