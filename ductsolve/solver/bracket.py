@@ -15,12 +15,14 @@ import numpy as np
 
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.fields import Level
-from ductsolve.solver.quadratic import Elements, corner_rule, gauss, interior, subdivided
+from ductsolve.solver.quadratic import Elements, corner_rule, gauss, subdivided
 
 Array = np.ndarray
 
-# The finer rule errs by less than this many times its difference to the coarser one.
-MARGIN = 4.0
+# Two rules far enough apart not to agree by accident; the finer one errs by less than this many times their
+# difference.
+RULES = (gauss(2), gauss(4))
+MARGIN = 2.0
 # Triangles whose margin exceeds this part of an equal share of the gap are subdivided ...
 NOTICEABLE = 0.03
 FEWEST_SHARES = 32  # ... of at least so many shares
@@ -50,10 +52,14 @@ class Part:
     margin: Array
 
 
-def _two_rules(level: Level, density, local, rules, chosen=slice(None)) -> Part:
-    coarse, fine = (Elements(level.mesh, rule, chosen) for rule in rules)
-    value = fine.integral(density(fine, local[chosen]))
-    return Part(value, MARGIN * np.abs(value - coarse.integral(density(coarse, local[chosen]))))
+def _two_rules(density, local, elements) -> Part:
+    """By elements at the points of a coarser and a finer rule."""
+    coarse, fine = (geometry.integral(density(geometry, local)) for geometry in elements)
+    return Part(fine, MARGIN * np.abs(fine - coarse))
+
+
+def _once(level: Level, density, local) -> Part:
+    return _two_rules(density, local, [level.at(rule) for rule in RULES])
 
 
 def _sharpened(level: Level, density, local, part: Part, gap: float) -> Part:
@@ -64,8 +70,8 @@ def _sharpened(level: Level, density, local, part: Part, gap: float) -> Part:
         worst = np.flatnonzero(margin > enough)
         if not len(worst):
             break
-        rules = [subdivided(rule, depth) for rule in (interior(), gauss(3))]
-        finer = _two_rules(level, density, local, rules, worst)
+        elements = (Elements(level.mesh, subdivided(rule, depth), worst) for rule in RULES)
+        finer = _two_rules(density, local[worst], elements)
         change = np.abs(finer.value - value[worst])
         value[worst], margin[worst] = finer.value, np.maximum(finer.margin, REMAINDER * change)
     return Part(value, margin)
@@ -129,11 +135,10 @@ def potential_bracket(
     level: Level, fluid: Fluid, gradient: float, psi: Array, velocity: Array
 ) -> PotentialBracket:
     """Bracket from a stress function and a velocity, both (n_triangles, 6)."""
-    rules = (interior(), gauss(3))
     above = complementary_density(level, fluid, gradient)
     below = dissipation_density(fluid)
-    stored = _two_rules(level, above, psi, rules)
-    spent = _two_rules(level, below, velocity, rules)
+    stored = _once(level, above, psi)
+    spent = _once(level, below, velocity)
     elements = level.elements
     work = elements.integral(np.sum(gradient * level.stress(psi) * elements.gradient(velocity), axis=0))
     gap = float((stored.value + spent.value - work).sum())
@@ -152,16 +157,14 @@ def potential_bracket(
 def upper_bound(level: Level, fluid: Fluid, gradient: float, psi: Array, gap: float) -> float:
     """Upper bound on the potential from a stress function alone; ``gap`` says what error is noticed."""
     density = complementary_density(level, fluid, gradient)
-    stored = _sharpened(level, density, psi, _two_rules(level, density, psi, (interior(), gauss(3))), gap)
+    stored = _sharpened(level, density, psi, _once(level, density, psi), gap)
     return float((stored.value + stored.margin + wall_allowance(level, fluid, gradient, psi)).sum())
 
 
 def dissipation(level: Level, fluid: Fluid, velocity: Array, gap: float) -> float:
     """Upper bound on int F(|grad w|) of a velocity, for walls on the mesh edges."""
     density = dissipation_density(fluid)
-    spent = _sharpened(
-        level, density, velocity, _two_rules(level, density, velocity, (interior(), gauss(3))), gap
-    )
+    spent = _sharpened(level, density, velocity, _once(level, density, velocity), gap)
     return float((spent.value + spent.margin).sum())
 
 

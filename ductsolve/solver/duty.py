@@ -116,8 +116,8 @@ class _Duty:
         """Estimated relative error of an estimate: a part of how far it moved from the level before.
 
         Errors fall about fourfold a level, so a small move counts no less than a quarter of the one before.
-        The result lies between ``LEAST_LEFT`` of ``spread``, what is left open by bounds or by the other field,
-        and all of it; it is all of it on the first level.
+        The result lies between ``LEAST_LEFT`` of ``spread``, what is left open by bounds or by the other
+        field, and all of it; it is all of it on the first level.
         """
         before, self._estimate = self._estimate, estimate
         if before is None or estimate <= 0 or not math.isfinite(estimate):

@@ -11,7 +11,7 @@ from scipy.sparse.csgraph import connected_components
 
 from ductsolve.mesh.bisect import bisect
 from ductsolve.mesh.triangles import Mesh
-from ductsolve.solver.quadratic import Elements, interior
+from ductsolve.solver.quadratic import Elements, Rule, interior
 from ductsolve.solver.system import System
 from ductsolve.solver.walls import WallForces
 
@@ -35,10 +35,20 @@ class Level:
     origin: np.ndarray
     cuts: np.ndarray | None = None
 
+    def at(self, rule: Rule) -> Elements:
+        """Geometry at the points of a rule, worked out once."""
+        if rule not in self._at:
+            self._at[rule] = Elements(self.mesh, rule)
+        return self._at[rule]
+
     @cached_property
+    def _at(self) -> dict[Rule, Elements]:
+        return {}
+
+    @property
     def elements(self) -> Elements:
         """Geometry at the points of assembly."""
-        return Elements(self.mesh, interior())
+        return self.at(interior())
 
     @cached_property
     def stress_system(self) -> System:

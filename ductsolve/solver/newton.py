@@ -15,7 +15,7 @@ Array = np.ndarray
 
 MOST_STEPS = 60
 SUFFICIENT = 1e-4  # part of the predicted gain a step must bring (Armijo)
-PATIENCE = 12
+PATIENCE = 25
 SMALLEST_SHARE = 1e-3
 SMALLEST_STEP = 2.0**-20
 TINY = 1e-200

@@ -12,12 +12,13 @@ from ductsolve.errors import DuctsolveWarning, DutyError, FluidError, SectionErr
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
+from ductsolve.solver.fields import Level
 from ductsolve.solver.flow import DuctFlow, LevelRecord, Status
 from ductsolve.solver.levels import first_level, refine
 from ductsolve.solver.startup import LimitLevel, starts
 from ductsolve.solver.working import beyond_table
 
-TRIANGLE_BUDGET = 20_000
+TRIANGLE_BUDGET = 40_000
 METHODS = ("newton", "picard")
 NARROWEST = 1e-7  # brackets are not asked to be narrower: rounding sets in
 TYPICAL_GROWTH = 1.5  # of the triangles from one level to the next, at least
@@ -64,33 +65,46 @@ def solve(
     """
     _check_objects(section, fluid)
     _check(pressure_gradient, flow_rate, accuracy, method)
+    if not _is_number(triangle_budget) or triangle_budget < 1:
+        raise DutyError(f"triangle_budget must be a positive number, found {triangle_budget!r}")
     picard = method == "picard"
     if pressure_gradient is not None:
         duty = FlowRateWanted(section, fluid, float(pressure_gradient), accuracy, picard)
     else:
         duty = GradientWanted(section, fluid, float(flow_rate), accuracy, picard)
-    level, psi, history, moves = first_level(section), None, [], None
+    level, psi, history, faint = first_level(section), None, [], False
     while True:
-        # Where proved flow does not show on a fine mesh, it is too faint for any affordable one.
-        budget = triangle_budget * (FAINT_SHARE if moves else 1.0)
-        last = len(level.mesh.triangles) * TYPICAL_GROWTH > budget
+        last = _last(level, triangle_budget, faint)
         answer = duty.answer(level, psi, final=last)
         history.append(_record(answer))
         if progress:
             progress(history[-1])
-        if answer.iterate.bracket.low > 0:
-            moves = None
-        elif moves is None and fluid.yield_stress > 0 and pressure_gradient is not None:
-            moves, limit = starts(section, fluid, duty.gradient)
-            if moves is False:
-                return _rest(duty, limit, history)
-            if moves is None:
-                return _flow(duty, duty.undecided(answer), Status.UNDECIDED, history)
+        still = answer.iterate.bracket.low <= 0
+        rest = _at_rest(duty, answer, history) if still and not faint else None
+        if rest:
+            return rest
         if _reached(answer, accuracy, len(history)):
             return _flow(duty, answer, Status.ANSWERED, history)
         if last:
             return _flow(duty, answer, Status.BUDGET, history)
+        faint = still
         level, psi = refine(answer.iterate)
+
+
+def _last(level: Level, budget: float, faint: bool) -> bool:
+    """Whether the next level would exceed the budget of triangles, smaller where no flow has shown yet: what
+    does not show on a fine mesh is too faint for any affordable one."""
+    return len(level.mesh.triangles) * TYPICAL_GROWTH > budget * (FAINT_SHARE if faint else 1.0)
+
+
+def _at_rest(duty, answer: Answer, history) -> DuctFlow | None:
+    """The flow that is none, or that cannot be told from none; None where the gradient moves the fluid."""
+    if not isinstance(duty, FlowRateWanted) or duty.fluid.yield_stress == 0:
+        return None
+    moves, limit = starts(duty.section, duty.fluid, duty.gradient)
+    if moves is None:
+        return _flow(duty, duty.undecided(answer), Status.UNDECIDED, history)
+    return None if moves else _rest(duty, limit, history)
 
 
 def _reached(answer: Answer, accuracy: float, levels: int) -> bool:
@@ -173,7 +187,7 @@ def _check_objects(section, fluid):
         raise SectionError(
             f"section must come from rectangle(...), annulus(...) or the like, found {section!r}"
         )
-    if not callable(getattr(fluid, "complementary", None)):
+    if isinstance(fluid, type) or not callable(getattr(fluid, "complementary", None)):
         raise FluidError(f"fluid must be a law such as PowerLaw(...) or a FlowCurve, found {fluid!r}")
 
 
