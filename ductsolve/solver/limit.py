@@ -31,6 +31,7 @@ LEAST_SLACK = 1e-9  # of the limit squared
 START_SLACK = 1.2  # first limit over the largest stress
 MOST_STEPS = 25  # Newton steps a weight
 CENTRED = 1e-2  # decrement, per unit of barrier weight, that counts as centred
+MARKING_WEIGHT = 243.0  # beyond it velocities are too sharp to tell where to refine
 THRESHOLDS = 60
 
 
@@ -94,6 +95,8 @@ def bracket_limit(level: Level, psi: np.ndarray, hydraulic_diameter: float, accu
         velocity = _multipliers(points, points.stress(psi), limit)
         if len(fields) < SMOOTH_FIELDS:
             fields.append(level.nodal(velocity))
+        if weight <= MARKING_WEIGHT:
+            marking = velocity
         if weight >= last:
             break
         weight = min(weight * WEIGHT_GROWTH, last)
@@ -101,7 +104,7 @@ def bracket_limit(level: Level, psi: np.ndarray, hydraulic_diameter: float, accu
     low = 1 / largest_stress(level, psi)
     deviation = level.mesh.edge_deviation.max(initial=0.0)
     doubt = 8 * deviation / hydraulic_diameter  # a wall out of place changes length/area by 4 d/D; doubled
-    return LimitBracket(low, high, doubt, psi, _gap(points, psi, velocity, 1 / low))
+    return LimitBracket(low, high, doubt, psi, _gap(points, psi, marking, 1 / low))
 
 
 def _largest(stress):

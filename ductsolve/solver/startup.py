@@ -17,9 +17,8 @@ from ductsolve.solver.limit import LimitBracket, bracket_limit
 from ductsolve.solver.newton import balance
 
 TRIANGLE_BUDGET = 30_000
-AIM = 0.2  # of the accuracy asked: narrower, for the sake of the best estimate inside
-# Where the limit lies in a first bracket and in later ones, as measured: the upper bound is the sharper.
-FIRST_SHARE, USUAL_SHARE = 0.9, 0.75
+AIM = 0.4  # of the accuracy asked: narrower, for the sake of the best estimate inside
+LARGEST_SHARE = 0.9  # of the bracket below the limit, as measured: the upper bound is the sharper
 DECISION_ACCURACY = 1e-3  # nearer to the start-up gradient than this, flow or rest is left undecided
 
 
@@ -122,13 +121,12 @@ def limit_levels(section: Section, accuracy: float) -> Iterator[LimitLevel]:
 
 
 def _best(best, before: LimitBracket | None, now: LimitBracket, level: Level) -> LimitLevel:
-    """Bounds of all levels together; the estimate heeds how much each bound moved."""
+    """Bounds of all levels together; the estimate divides the last bracket by how much each bound moved."""
     low, high = now.low * (1 - now.doubt), now.high * (1 + now.doubt)
-    share = FIRST_SHARE
+    share = LARGEST_SHARE
     if before is not None:
         below, above = abs(now.low - before.low), abs(now.high - before.high)
-        if below + above > 0:
-            share = (below / (below + above) + USUAL_SHARE) / 2
+        share = min(share, below / (below + above) if below + above > 0 else share)
     newer = best is None or low >= best.low
     if best is not None:
         low, high = max(low, best.low), min(high, best.high)
