@@ -130,10 +130,11 @@ def _best(best, before: LimitBracket | None, now: LimitBracket, level: Level) ->
     newer = best is None or low >= best.low
     if best is not None:
         low, high = max(low, best.low), min(high, best.high)
+    bare_low, bare_high = low / (1 - now.doubt), high / (1 + now.doubt)
     return LimitLevel(
         low=low,
         high=high,
-        estimate=float(np.clip(now.low + share * (now.high - now.low), low, high)),
+        estimate=float(np.clip(bare_low + share * (bare_high - bare_low), low, high)),
         level=level if newer else best.level,
         psi=now.psi if newer else best.psi,
     )
