@@ -171,7 +171,10 @@ def plain_best(opponents: list[Opponent], error: float) -> float:
 
 
 def compare(problem: Problem):
-    """Print the lines of one problem; yields (tuned, plain, same error) ratios of times."""
+    """Print the lines of one problem; yields (tuned, plain, same error) ratios of times.
+
+    A line not tried, or a truth not known well enough to tell true errors, gives NaN.
+    """
     reference = problem.solve(REFERENCE_ACCURACY)
     true_flow, within = reference.flow_rate, reference.history[-1].half_width
     opponents = [
@@ -182,6 +185,7 @@ def compare(problem: Problem):
         label = (problem.name, f"{100 * accuracy:g} %")
         if seconds > TOO_LONG:
             print_row((*label, *"---", f"> {milliseconds(seconds)}", *"-" * 8), WIDTHS)
+            yield [math.nan] * 3
             continue
         seconds, flow = best_time(lambda a=accuracy: problem.solve(a))
         error = abs(flow.flow_rate / true_flow - 1)
@@ -192,8 +196,9 @@ def compare(problem: Problem):
         columns = [cell for t in times for cell in _time_and_ratio(t, seconds)]
         mesh = (best.mesh, best.steps) if best else ("not reached", "-")
         print_row((*label, *_own(flow, error, seconds), *mesh, *columns), WIDTHS)
-        if flow.status is Status.ANSWERED:
-            yield [seconds / t for t in times]
+        reached = flow.status is Status.ANSWERED
+        ratios = [(seconds if reached else math.inf) / t if math.isfinite(t) else 0.0 for t in times]
+        yield [*ratios[:2], ratios[2] if known and reached else math.nan]
     print(f"   truth known to {within:.0e}, by estimate to {reference.estimated_error:.0e}")
 
 
@@ -217,12 +222,20 @@ def main():
     ratios = [three for problem in all_problems() if words in problem.name for three in compare(problem)]
     names = ("tuned, to the accuracy asked", "plain, to the accuracy asked", "tuned, to the same true error")
     for name, column in zip(names, zip(*ratios, strict=True), strict=False):
-        column = [ratio for ratio in column if ratio > 0]
-        slower, middle = sum(ratio > 1 for ratio in column), statistics.median(column)
-        print(
-            f"library {name}: {len(column)} comparisons, ductsolve slower in {slower}, "
-            f"median ratio {middle:.2f}, largest {max(column):.2f}"
-        )
+        print(f"library {name}: {summary(column)}")
+
+
+def summary(column) -> str:
+    """One line on a column of ratios: 0 where only ductsolve got there, infinite where only the library did."""
+    compared = [ratio for ratio in column if not math.isnan(ratio)]
+    if not compared:
+        return "nothing to compare"
+    slower, never = sum(ratio > 1 for ratio in compared), sum(map(math.isinf, compared))
+    largest = max((ratio for ratio in compared if math.isfinite(ratio)), default=math.nan)
+    return (
+        f"{len(compared)} lines compared, {len(column) - len(compared)} not; ductsolve slower in {slower}, of "
+        f"which {never} not reached; median ratio {statistics.median(compared):.2f}, largest {largest:.2f}"
+    )
 
 
 if __name__ == "__main__":

@@ -56,7 +56,11 @@ class System:
         matrix = sparse.csc_matrix((values, self._indices, self._pointers), shape=(self.size, self.size))
         try:
             solve = splu(
-                matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
+                matrix,
+                permc_spec="MMD_AT_PLUS_A",
+                diag_pivot_thresh=0.0,
+                panel_size=1,
+                options={"SymmetricMode": True},
             ).solve
         except RuntimeError as error:
             raise SingularError(str(error)) from error
