@@ -226,15 +226,15 @@ def main():
 
 
 def summary(column) -> str:
-    """One line on a column of ratios: 0 where only ductsolve got there, infinite where only the library did."""
+    """One line on ratios: 0 where only ductsolve got there, infinite where only the library did."""
     compared = [ratio for ratio in column if not math.isnan(ratio)]
     if not compared:
         return "nothing to compare"
     slower, never = sum(ratio > 1 for ratio in compared), sum(map(math.isinf, compared))
     largest = max((ratio for ratio in compared if math.isfinite(ratio)), default=math.nan)
     return (
-        f"{len(compared)} lines compared, {len(column) - len(compared)} not; ductsolve slower in {slower}, of "
-        f"which {never} not reached; median ratio {statistics.median(compared):.2f}, largest {largest:.2f}"
+        f"{len(compared)} lines compared, {len(column) - len(compared)} not; ductsolve slower in {slower}, "
+        f"{never} of them not reached; median ratio {statistics.median(compared):.2f}, largest {largest:.2f}"
     )
 
 

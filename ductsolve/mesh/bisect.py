@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import sparse
 
-from ductsolve.mesh.triangles import SIDES, Mesh, fit_to_curves
+from ductsolve.mesh.triangles import SIDES, Mesh, fit_to_curves, shapes
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,16 +32,10 @@ class Refinement:
     local: np.ndarray
 
 
-def _shape(barycentric):
-    """Quadratic shape functions (6,) at a barycentric point."""
-    a, b, c = barycentric
-    return np.array([a * (2 * a - 1), b * (2 * b - 1), c * (2 * c - 1), 4 * a * b, 4 * b * c, 4 * c * a])
-
-
 def _child_nodes(corners):
     """Interpolation (6, 6) from a triangle's nodes to those of a child with barycentric corners."""
     a, b, c = np.asarray(corners, dtype=float)
-    return np.array([_shape(p) for p in (a, b, c, (a + b) / 2, (b + c) / 2, (c + a) / 2)])
+    return shapes(np.array([a, b, c, (a + b) / 2, (b + c) / 2, (c + a) / 2]))
 
 
 # Bisecting side 0 of (c0, c1, c2) at m gives (c2, c0, m) and (c1, c2, m).

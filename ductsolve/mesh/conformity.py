@@ -8,7 +8,7 @@ from scipy.sparse import csgraph
 
 from ductsolve.errors import SectionError
 from ductsolve.mesh.loops import edge_lengths, enclosed_area, outline_loops
-from ductsolve.mesh.triangles import Mesh
+from ductsolve.mesh.triangles import Mesh, cross
 
 # Closer than this part of the shorter edge, two edges touch.
 TOUCHING = 1e-6
@@ -92,7 +92,7 @@ def _check_curved(mesh):
         along_b = np.array([0, 4 * b - 1, 0, 4 * a, 4 * c, 0])
         along_c = np.array([0, 0, 4 * c - 1, 0, 4 * b, 4 * a])
         u, v = (along_b - along_a) @ nodes, (along_c - along_a) @ nodes
-        at_nodes[:, k] = u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
+        at_nodes[:, k] = cross(u, v)
     corners = at_nodes[:, :3]
     sides = 2 * at_nodes[:, 3:] - (corners + np.roll(corners, -1, axis=1)) / 2
     inverted = (np.minimum(corners, sides) <= 0).any(axis=1)
@@ -176,5 +176,4 @@ def _distance(p, a, b):
 
 def _turn(a, b, c):
     """Twice the signed area (n,) of triangles a, b, c."""
-    u, v = b - a, c - a
-    return u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
+    return cross(b - a, c - a)

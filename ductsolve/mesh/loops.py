@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from ductsolve.errors import SectionError
-from ductsolve.mesh.triangles import Mesh, signed_areas
+from ductsolve.mesh.triangles import Mesh, cross, signed_areas
 
 # The speed along a parabola is the root of a quadratic: 20 Gauss points leave an error of 4e-13 where
 # the sagitta is 0.4 of the chord, and rounding only on anything flatter.
@@ -76,7 +76,7 @@ def edge_areas(nodes: np.ndarray) -> np.ndarray:
     over a closed loop they give the enclosed area exactly.
     """
     start, end, middle = nodes[:, 0], nodes[:, 1], nodes[:, 2]
-    return _cross(start, end) / 2 + 2 / 3 * _cross(middle - start, end - middle)
+    return cross(start, end) / 2 + 2 / 3 * cross(middle - start, end - middle)
 
 
 def edge_lengths(nodes: np.ndarray) -> np.ndarray:
@@ -94,7 +94,3 @@ def centroid(mesh: Mesh) -> np.ndarray:
     corners = mesh.triangles[:, :3]
     areas = signed_areas(mesh.points, corners)
     return areas @ mesh.points[corners].mean(axis=1) / areas.sum()
-
-
-def _cross(a, b):
-    return a[..., 0] * b[..., 1] - a[..., 1] * b[..., 0]

@@ -205,7 +205,7 @@ def _graded(length, gap, growth=2.5, cells=4):
     while sum(steps) < length:
         steps.append(steps[-1] * growth)
     lines = length - np.cumsum([0, *steps])
-    lines = lines[lines > 0.25 * (steps[-1] if len(steps) else 0)]
+    lines = lines[lines > 0.25 * steps[-1]]
     return np.concatenate([[0], lines[::-1]])
 
 

@@ -101,17 +101,32 @@ class Mesh:
         return deviation
 
 
+def shapes(barycentric: np.ndarray) -> np.ndarray:
+    """Quadratic shape functions (n, 6) of a triangle at barycentric points (n, 3)."""
+    a, b, c = barycentric.T
+    corners = [a * (2 * a - 1), b * (2 * b - 1), c * (2 * c - 1)]
+    return np.column_stack([*corners, 4 * a * b, 4 * b * c, 4 * c * a])
+
+
+def edge_shapes(s: np.ndarray) -> np.ndarray:
+    """Quadratic shape functions (3, n) of an edge's start, end and middle at positions s in [0, 1]."""
+    return np.stack([(1 - s) * (1 - 2 * s), s * (2 * s - 1), 4 * s * (1 - s)])
+
+
 def edge_points(nodes: np.ndarray, s: float) -> np.ndarray:
     """Points (n, 2) at position s in [0, 1] on edges given by start, end and middle, (n, 3, 2)."""
-    shape = np.array([(1 - s) * (1 - 2 * s), s * (2 * s - 1), 4 * s * (1 - s)])
-    return np.einsum("k,nkd->nd", shape, nodes)
+    return np.einsum("k,nkd->nd", edge_shapes(np.float64(s)), nodes)
+
+
+def cross(u: np.ndarray, v: np.ndarray) -> np.ndarray:
+    """Cross product (...) of plane vectors (..., 2)."""
+    return u[..., 0] * v[..., 1] - u[..., 1] * v[..., 0]
 
 
 def signed_areas(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
     """Signed areas (n,) of the straight triangles with corner indices (n, 3) [m2]."""
     a, b, c = (points[corners[:, k]] for k in range(3))
-    u, v = b - a, c - a
-    return (u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]) / 2
+    return cross(b - a, c - a) / 2
 
 
 def mesh_from_corners(points, corners, boundaries, boundary_of_edge) -> Mesh:

@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ductsolve.rheology.fluid import Fluid
-from ductsolve.solver.fields import Level
+from ductsolve.solver.fields import Level, size
 from ductsolve.solver.quadratic import Elements, corner_rule, gauss, subdivided
 
 Array = np.ndarray
@@ -31,11 +31,6 @@ REMAINDER = 1 / 4
 SUBDIVISIONS = (1, 3)
 SAFE_SUBDIVISION = 4
 WALL_SAFETY = 2.0  # the first-order price of a wall out of place, doubled
-
-
-def size(vector: Array) -> Array:
-    """Euclidean length of a vector field (2, ...)."""
-    return np.sqrt(vector[0] ** 2 + vector[1] ** 2)
 
 
 @dataclass(frozen=True, eq=False)

@@ -13,8 +13,7 @@ import numpy as np
 
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
-from ductsolve.solver.bracket import size
-from ductsolve.solver.fields import Level
+from ductsolve.solver.fields import Level, size
 from ductsolve.solver.levels import Iterate, relax
 from ductsolve.solver.rate import (
     Response,
@@ -63,6 +62,16 @@ class Answer:
     def half_width(self) -> float | None:
         """Relative half-width of the bracket, None where it was not worked out."""
         return half_width(self.bracket)
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """Gradient [Pa/m] and flow rate [m3/s], of which one was given, and the bracket on each."""
+
+    gradient: float
+    rate: float
+    gradient_bracket: Bracket
+    rate_bracket: Bracket
 
 
 def half_width(bracket: Bracket) -> float | None:
@@ -169,6 +178,10 @@ class FlowRateWanted(_Duty):
         rate = float(np.clip(self.copies * estimate, *bracket))
         return Answer(iterate, rate, bracket, self._settled(rate, spread))
 
+    def outcome(self, answer: Answer) -> Outcome:
+        """What the answer says of gradient and flow rate."""
+        return Outcome(self.gradient, answer.estimate, (self.gradient, self.gradient), answer.bracket)
+
     def undecided(self, answer: Answer) -> Answer:
         """The same answer when nobody can tell whether anything flows."""
         return Answer(answer.iterate, 0.0, self._ceiling(answer.iterate), 1.0)
@@ -214,6 +227,10 @@ class GradientWanted(_Duty):
         gradient = iterate.gradient * (self.flow_rate / (self.copies * estimate)) ** (1 / local)
         gradient = float(np.clip(gradient, *bracket))
         return Answer(iterate, gradient, bracket, self._settled(gradient, spread / local))
+
+    def outcome(self, answer: Answer) -> Outcome:
+        """What the answer says of gradient and flow rate."""
+        return Outcome(answer.estimate, self.flow_rate, answer.bracket, (self.flow_rate, self.flow_rate))
 
     def _power_law_answer(self, level, psi):
         iterate = self._relax(level, psi, self.gradient)

@@ -101,6 +101,16 @@ class Level:
         return replace(self, mesh=step.mesh, cuts=cuts), new_psi
 
 
+def size(vector: np.ndarray) -> np.ndarray:
+    """Euclidean length of a vector field (2, ...)."""
+    return np.sqrt(vector[0] ** 2 + vector[1] ** 2)
+
+
 def curl(gradient: np.ndarray) -> np.ndarray:
     """(d/dy, -d/dx) from a gradient (2, ...)."""
     return np.stack([gradient[1], -gradient[0]])
+
+
+def curl_transposed(vector: np.ndarray) -> np.ndarray:
+    """Vector field v' (2, ...) with v . curl(f) = v' . grad(f) for any f."""
+    return np.stack([-vector[1], vector[0]])

@@ -8,9 +8,9 @@ import numpy as np
 
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
-from ductsolve.solver.bracket import PotentialBracket, potential_bracket, size
+from ductsolve.solver.bracket import PotentialBracket, potential_bracket
 from ductsolve.solver.cuts import hole_cuts
-from ductsolve.solver.fields import Level
+from ductsolve.solver.fields import Level, size
 from ductsolve.solver.newton import TINY, Capped, Velocity, balance, relax_stress, relax_velocity
 
 # Iterations end when a step gains this part of the gap that is hoped for ...

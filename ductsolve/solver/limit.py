@@ -16,8 +16,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ductsolve.solver.fields import Level, curl
-from ductsolve.solver.newton import SMALLEST_STEP, SUFFICIENT, TINY, curl_transposed, tensor
+from ductsolve.solver.fields import Level, curl, curl_transposed, size
+from ductsolve.solver.newton import TINY, line_search, tensor
 from ductsolve.solver.quadratic import Elements, corner_rule
 from ductsolve.solver.superlevel import PositiveParts, least_ratio
 from ductsolve.solver.system import SingularError, System
@@ -109,19 +109,19 @@ def bracket_limit(level: Level, psi: np.ndarray, hydraulic_diameter: float, accu
 
 def _largest(stress):
     bulk, wall = stress
-    return float(max(np.sqrt((bulk**2).sum(axis=0)).max(), np.abs(wall).max(initial=0.0)))
+    return float(max(size(bulk).max(), np.abs(wall).max(initial=0.0)))
 
 
 def largest_stress(level: Level, psi: np.ndarray) -> float:
     """Largest stress magnitude per unit gradient [m]: at corners of straight triangles, where a linear
     field is largest; on curved ones sampled, with the last refinement of the samples added once more."""
     bulk = Elements(level.mesh, corner_rule(0))
-    most = float(np.sqrt((level.stress(psi, bulk) ** 2).sum(axis=0)).max())
+    most = float(size(level.stress(psi, bulk)).max())
     curved = np.flatnonzero(level.mesh.curved)
     if not len(curved):
         return most
     coarse, fine = (
-        float(np.sqrt((level.stress(psi[curved], elements) ** 2).sum(axis=0)).max())
+        float(size(level.stress(psi[curved], elements)).max())
         for elements in (Elements(level.mesh, corner_rule(n), curved) for n in (2, 3))
     )
     return max(most, fine + (fine - coarse))
@@ -149,10 +149,8 @@ def _centre(points, psi, limit, weight):
             moved = tuple(s + t * c for s, c in zip(stress, change, strict=True))
             return weight * (limit + t * step_limit) + points.barrier(moved, limit + t * step_limit)
 
-        t, start = 1.0, merit(0.0)
-        while t > SMALLEST_STEP and not merit(t) <= start - SUFFICIENT * t * decrement:
-            t /= 2
-        if t <= SMALLEST_STEP or not np.isfinite(start):
+        t, _ = line_search(merit, decrement)
+        if t == 0:
             break
         psi, limit = psi + t * step_psi, limit + t * step_limit
         if decrement < CENTRED * points.total:
@@ -165,13 +163,13 @@ def _derivatives(points, stress, limit):
     bulk, wall = stress
     slack, wall_slack = points.slack(stress, limit)
     weights, wall_weights = points.bulk.weights, points.wall_weights
-    secant, tangent = 2 / slack, 2 * (2 * limit**2 - slack) / slack**2
-    wall_tangent = 2 * (2 * limit**2 - wall_slack) / wall_slack**2
-    direction = curl_transposed(bulk / np.maximum(np.sqrt((bulk**2).sum(axis=0)), TINY))
+    secant, tangent = _fluidity(slack, limit)
+    wall_secant, wall_tangent = _fluidity(wall_slack, limit)
+    direction = curl_transposed(bulk / np.maximum(size(bulk), TINY))
     bend = points.bulk.stiffness(tensor(tangent, secant, direction))
     points.wall.add_traction_stiffness(bend, points.layer * wall_tangent)
     slope = points.bulk.load(curl_transposed(secant * bulk))
-    points.wall.add_traction_load(slope, points.layer * 2 * wall / wall_slack)
+    points.wall.add_traction_load(slope, points.layer * wall_secant * wall)
     mixed = points.bulk.load(curl_transposed(-4 * limit * bulk / slack**2))
     points.wall.add_traction_load(mixed, points.layer * -4 * limit * wall / wall_slack**2)
     slope_limit = -2 * limit * ((weights / slack).sum() + (wall_weights / wall_slack).sum())
@@ -180,13 +178,18 @@ def _derivatives(points, stress, limit):
     return slope, slope_limit, bend, mixed, bend_limit
 
 
+def _fluidity(slack, limit):
+    """Secant and tangent of the barrier - ln(slack) by the stress."""
+    return 2 / slack, 2 * (2 * limit**2 - slack) / slack**2
+
+
 def _multipliers(points, stress, limit):
     """Velocity (n_triangles, 6), free to slip at walls, nearest to the multipliers of the constraints."""
     bulk, wall = stress
     slack, wall_slack = points.slack(stress, limit)
-    secant, tangent = 2 / slack, 2 * (2 * limit**2 - slack) / slack**2
-    wall_secant, wall_tangent = 2 / wall_slack, 2 * (2 * limit**2 - wall_slack) / wall_slack**2
-    direction = bulk / np.maximum(np.sqrt((bulk**2).sum(axis=0)), TINY)
+    secant, tangent = _fluidity(slack, limit)
+    wall_secant, wall_tangent = _fluidity(wall_slack, limit)
+    direction = bulk / np.maximum(size(bulk), TINY)
     stiffness = points.bulk.stiffness(tensor(1 / tangent, 1 / secant, direction))
     points.wall.add_value_stiffness(stiffness, 1 / (wall_tangent * points.layer))
     load = points.bulk.load(bulk * secant / tangent)
@@ -199,8 +202,7 @@ def _gap(points, psi, velocity, limit):
     """limit |grad w| - stress . grad w, over triangles and their walls."""
     elements, wall = points.level.elements, points.wall
     rate = elements.gradient(velocity)
-    size = np.sqrt((rate**2).sum(axis=0))
-    gap = elements.integral(limit * size - (points.level.stress(psi) * rate).sum(axis=0))
+    gap = elements.integral(limit * size(rate) - (points.level.stress(psi) * rate).sum(axis=0))
     slip = wall.values(velocity)
     at_wall = wall.weights * (limit * np.abs(slip) - wall.traction(psi) * slip)
     np.add.at(gap, wall.owner, at_wall.sum(axis=1))

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ductsolve.rheology.fluid import Fluid
-from ductsolve.solver.fields import Level, curl
+from ductsolve.solver.fields import Level, curl, curl_transposed, size
 from ductsolve.solver.system import SingularError
 
 Array = np.ndarray
@@ -55,11 +55,7 @@ def tensor(along, across, direction):
     return across + change * x * x, change * x * y, across + change * y * y
 
 
-def _size(vector):
-    return np.sqrt(vector[0] ** 2 + vector[1] ** 2)
-
-
-def _line_search(energy, predicted):
+def line_search(energy, predicted):
     """Largest of 1, 1/2, 1/4, ... with enough of the predicted gain, or 0; and the energy there."""
     start = energy(0.0)
     step = 1.0
@@ -80,11 +76,6 @@ def balance(level: Level) -> Array:
     return system.spread(solve(-elements.load(curl_transposed(known))))
 
 
-def curl_transposed(vector):
-    """Vector v' with v . curl(f) = v' . grad(f)."""
-    return np.stack([-vector[1], vector[0]])
-
-
 def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop: float):
     """Newton (or Picard) on the complementary energy E.
 
@@ -94,9 +85,9 @@ def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop
     elements, system = level.elements, level.stress_system
     stress = level.stress(psi)
     for step in range(1, MOST_STEPS + 1):  # noqa: B007
-        size = _size(stress)
-        secant, tangent = capped.linearised(gradient * size)
-        direction = curl_transposed(stress / np.maximum(size, TINY))
+        magnitude = size(stress)
+        secant, tangent = capped.linearised(gradient * magnitude)
+        direction = curl_transposed(stress / np.maximum(magnitude, TINY))
         try:
             solve = system.factor(elements.stiffness(tensor(tangent, secant, direction)))
         except SingularError:
@@ -109,9 +100,9 @@ def relax_stress(level: Level, capped: Capped, gradient: float, psi: Array, stop
         moved = curl(elements.gradient(change))
 
         def energy(t, stress=stress, moved=moved):
-            return elements.integral(capped.energy(gradient * _size(stress + t * moved))).sum()
+            return elements.integral(capped.energy(gradient * size(stress + t * moved))).sum()
 
-        t, value = _line_search(energy, predicted)
+        t, value = line_search(energy, predicted)
         psi, stress = psi + t * change, stress + t * moved
         if predicted / 2 <= stop * value or t == 0:
             break
@@ -147,9 +138,9 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
     stress = gradient * level.stress(psi)
     best, most, idle, solve = np.zeros((elements.count, 6)), 0.0, 0, None
     for step in range(1, MOST_STEPS + 1):  # noqa: B007
-        size = _size(stress)
-        secant, tangent = capped.linearised(size)
-        viscosity = tensor(1 / tangent, 1 / secant, stress / np.maximum(size, TINY))
+        magnitude = size(stress)
+        secant, tangent = capped.linearised(magnitude)
+        viscosity = tensor(1 / tangent, 1 / secant, stress / np.maximum(magnitude, TINY))
         try:
             solve = system.factor(elements.stiffness(viscosity))
         except SingularError:
@@ -157,7 +148,7 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
         pull = stress * (1 - secant / tangent)  # the rate secant x stress lies along the stress
         velocity = system.spread(solve(gradient * elements.unit_load - elements.load(pull)))
         rate = elements.gradient(velocity)
-        share, worth = _worth(elements, capped.fluid, gradient, velocity, _size(rate))
+        share, worth = _worth(elements, capped.fluid, gradient, velocity, size(rate))
         idle += worth - most <= stop * most
         if worth > most:
             best, most = share * velocity, worth
@@ -166,10 +157,10 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
         moved = _applied(viscosity, rate - secant * stress)
 
         def energy(t, stress=stress, moved=moved):
-            return elements.integral(capped.energy(_size(stress + t * moved))).sum()
+            return elements.integral(capped.energy(size(stress + t * moved))).sum()
 
         predicted = -float(np.sum(elements.weights * secant * np.sum(stress * moved, axis=0)))
-        stress = stress + _line_search(energy, max(predicted, 0.0))[0] * moved
+        stress = stress + line_search(energy, max(predicted, 0.0))[0] * moved
     return Velocity(best, stress, solve, step)
 
 

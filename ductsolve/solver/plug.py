@@ -7,8 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ductsolve.rheology.fluid import Fluid
-from ductsolve.solver.bracket import size
-from ductsolve.solver.fields import Level
+from ductsolve.solver.fields import Level, size
 from ductsolve.solver.quadratic import Elements, gauss, subdivided
 
 SLOW = 0.01  # of the nominal shear rate 8 U / hydraulic diameter

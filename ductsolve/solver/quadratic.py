@@ -7,7 +7,7 @@ from functools import cache, cached_property
 
 import numpy as np
 
-from ductsolve.mesh.triangles import Mesh
+from ductsolve.mesh.triangles import Mesh, shapes
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,9 +33,7 @@ class Rule:
 def _tabulate(points, weights):
     b, c = points.T
     a = 1 - b - c
-    values = np.column_stack(
-        [a * (2 * a - 1), b * (2 * b - 1), c * (2 * c - 1), 4 * a * b, 4 * b * c, 4 * c * a]
-    )
+    values = shapes(np.column_stack([a, b, c]))
     zero = np.zeros_like(a)
     along = np.column_stack([1 - 4 * a, 4 * b - 1, zero, 4 * (a - b), 4 * c, -4 * c])
     across = np.column_stack([1 - 4 * a, zero, 4 * c - 1, -4 * b, 4 * b, 4 * (a - c)])

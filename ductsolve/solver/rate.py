@@ -17,7 +17,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ductsolve.errors import FluidError
-from ductsolve.solver.bracket import dissipation, size, upper_bound
+from ductsolve.solver.bracket import dissipation, upper_bound
+from ductsolve.solver.fields import size
 from ductsolve.solver.levels import IDLE, Iterate
 from ductsolve.solver.newton import Capped, relax_stress, relax_velocity
 

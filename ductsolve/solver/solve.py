@@ -129,28 +129,22 @@ def _record(answer: Answer) -> LevelRecord:
 
 def _flow(duty, answer: Answer, status: Status, history) -> DuctFlow:
     """The answer for the whole section, its fields scaled to the flow rate reported."""
-    iterate = answer.iterate
-    if isinstance(duty, FlowRateWanted):
-        gradient, rate = duty.gradient, answer.estimate
-        gradients, rates = (gradient, gradient), answer.bracket
-    else:
-        gradient, rate = answer.estimate, duty.flow_rate
-        gradients, rates = answer.bracket, (rate, rate)
+    iterate, outcome = answer.iterate, duty.outcome(answer)
     computed = duty.copies * iterate.flow
     flow = DuctFlow(
         section=duty.section,
         fluid=duty.fluid,
-        pressure_gradient=gradient,
-        flow_rate=rate,
-        pressure_gradient_bracket=gradients,
-        flow_rate_bracket=rates,
+        pressure_gradient=outcome.gradient,
+        flow_rate=outcome.rate,
+        pressure_gradient_bracket=outcome.gradient_bracket,
+        flow_rate_bracket=outcome.rate_bracket,
         estimated_error=answer.error,
         accuracy=duty.accuracy,
         status=status,
         history=tuple(history),
         level=iterate.level,
         psi=iterate.psi,
-        velocity_field=iterate.velocity.local * (rate / computed if computed > 0 else 0.0),
+        velocity_field=iterate.velocity.local * (outcome.rate / computed if computed > 0 else 0.0),
         solved_gradient=iterate.gradient,
         gap=duty.copies * iterate.bracket.width,
     )

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from scipy.optimize import minimize
 
+from ductsolve.mesh.triangles import cross
 from ductsolve.solver.fields import Level
 from ductsolve.solver.walls import WallEdges
 
@@ -27,7 +28,7 @@ class PositiveParts:
         self._nodes = mesh.triangles[:, _QUARTERS].reshape(-1, 3)
         self._points = mesh.points[self._nodes]
         u, v = (self._points[:, k] - self._points[:, 0] for k in (1, 2))
-        self._areas = np.abs(_cross(u, v)) / 2
+        self._areas = np.abs(cross(u, v)) / 2
         self._slivers = _slivers(mesh, walls)
         edges = mesh.triangles[walls.owner[:, None], walls.nodes]
         self._wall = np.vstack([edges[:, [0, 2]], edges[:, [1, 2]]])
@@ -110,10 +111,6 @@ def least_ratio(parts: PositiveParts, fields: list[np.ndarray], thresholds: int)
     return min(best, float(found.fun)) if np.isfinite(found.fun) else best
 
 
-def _cross(u, v):
-    return u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
-
-
 def _slivers(mesh, walls):
     """Signed area between half-edge and chord, for each quarter triangle.
 
@@ -122,7 +119,7 @@ def _slivers(mesh, walls):
     """
     slivers = np.zeros((len(mesh.triangles), 4))
     start, end, middle = walls.points.transpose(1, 0, 2)
-    behind = _cross(middle - (start + end) / 2, end - start) * 2 / 3 / 8
+    behind = cross(middle - (start + end) / 2, end - start) * 2 / 3 / 8
     for k in (0, 1):
         np.add.at(slivers, (walls.owner, walls.nodes[:, k]), behind)
     return slivers.ravel()

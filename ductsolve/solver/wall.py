@@ -9,6 +9,7 @@ import numpy as np
 
 from ductsolve.mesh.loops import outline_loops
 from ductsolve.mesh.sections import Section
+from ductsolve.mesh.triangles import cross
 from ductsolve.solver.fields import Level
 from ductsolve.solver.whole import Whole
 
@@ -102,8 +103,7 @@ def _reentrant(mesh, loop):
     start, end, middle = mesh.points[mesh.edges[loop]].transpose(1, 0, 2)
     leaving = 3 * end - 4 * middle + start
     arriving = np.roll(4 * middle - 3 * start - end, -1, axis=0)
-    cross = leaving[:, 0] * arriving[:, 1] - leaving[:, 1] * arriving[:, 0]
-    turn = np.arctan2(cross, np.sum(leaving * arriving, axis=1))
+    turn = np.arctan2(cross(leaving, arriving), np.sum(leaving * arriving, axis=1))
     joined = mesh.edges[loop, 1] == np.roll(mesh.edges[loop, 0], -1)
     return end[joined & (turn < -REENTRANT_TURN)]
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ductsolve.mesh.triangles import Mesh
+from ductsolve.mesh.triangles import Mesh, edge_shapes
 
 
 class WallEdges:
@@ -34,7 +34,7 @@ class WallEdges:
 # and their derivatives.
 _X, _W = np.polynomial.legendre.leggauss(4)
 _S, _HALF_WEIGHTS = (_X + 1) / 4, _W / 4
-_HALF_SHAPES = np.stack([(1 - _S) * (1 - 2 * _S), _S * (2 * _S - 1), 4 * _S * (1 - _S)])
+_HALF_SHAPES = edge_shapes(_S)
 _HALF_SLOPES = np.stack([4 * _S - 3, 4 * _S - 1, 4 - 8 * _S])
 _REVERSED = [1, 0, 2]
 

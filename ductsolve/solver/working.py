@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ductsolve.solver.bracket import size
+from ductsolve.solver.fields import size
 from ductsolve.solver.flow import DuctFlow
 from ductsolve.solver.quadratic import Elements, gauss
 
