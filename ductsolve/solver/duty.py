@@ -31,7 +31,7 @@ Bracket = tuple[float, float]
 
 FIRST_GOAL = 1e-2  # relative gap to hope for on the first level
 GOAL_DROP = 8.0  # how much the gap is hoped to fall from level to level
-PROMISING = 1.5  # brackets are worked out once they should come this close to the accuracy
+PROMISING = 1.1  # brackets are worked out once they should come this close to the accuracy
 UNKNOWN: Bracket = (0.0, math.inf)
 MOVE_LEFT = 0.4  # of an estimate's last move: what it may still move
 LEAST_LEFT = 0.4  # of the spread: what it may always still move

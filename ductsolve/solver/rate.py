@@ -23,6 +23,7 @@ from ductsolve.solver.levels import IDLE, Iterate
 from ductsolve.solver.newton import Capped, relax_stress, relax_velocity
 
 LARGEST_TILT, SMALLEST_TILT = 0.3, 1e-7
+TILT_IDLE = 0.1  # iterations of tilted fluids end when a step gains this part of the gap
 INDEX_RANGE = (0.05, 3.0)
 
 
@@ -115,7 +116,7 @@ def tilted_bracket(iterate: Iterate, bend: Response, goal: float) -> tuple[float
 def _tilted_bound(iterate, fluid, goal):
     """Upper bound on the potential of a tilted fluid."""
     capped = Capped(fluid, iterate.capped.fluidity, iterate.capped.picard)
-    psi, _ = relax_stress(iterate.level, capped, iterate.gradient, iterate.psi, IDLE * goal)
+    psi, _ = relax_stress(iterate.level, capped, iterate.gradient, iterate.psi, TILT_IDLE * goal)
     return upper_bound(iterate.level, fluid, iterate.gradient, psi, iterate.bracket.width)
 
 

@@ -6,6 +6,10 @@ import numpy as np
 from scipy import sparse
 from scipy.sparse.linalg import splu
 
+# Without these together SuperLU treats the matrix as unsymmetric and is many times slower; wide panels do not
+# pay on matrices this sparse.
+SYMMETRIC = {"diag_pivot_thresh": 0.0, "panel_size": 1, "options": {"SymmetricMode": True}}
+
 
 class SingularError(ArithmeticError):
     """A system lost its rank to rounding; whoever iterates keeps what it has."""
@@ -36,6 +40,7 @@ class System:
         self._indices = (key[fresh] % self.size).astype(np.int32)
         counts = np.bincount(key[fresh] // self.size, minlength=self.size)
         self._pointers = np.concatenate([[0], np.cumsum(counts)]).astype(np.int32)
+        self._ordering = None
         self._slot = np.where(unknown >= 0, unknown, self.size).ravel()
 
     def gather(self, local: np.ndarray) -> np.ndarray:
@@ -53,20 +58,37 @@ class System:
     def factor(self, stiffness: np.ndarray):
         """Factorise local matrices (n_triangles, 36); returns a function from local loads to a solution."""
         values = np.add.reduceat(stiffness.ravel()[self._order], self._starts)
-        matrix = sparse.csc_matrix((values, self._indices, self._pointers), shape=(self.size, self.size))
         try:
-            solve = splu(
-                matrix,
-                permc_spec="MMD_AT_PLUS_A",
-                diag_pivot_thresh=0.0,
-                panel_size=1,
-                options={"SymmetricMode": True},
-            ).solve
+            solve = self._first_factor(values) if self._ordering is None else self._next_factor(values)
         except RuntimeError as error:
             raise SingularError(str(error)) from error
         if self.borders is None:
             return lambda load: solve(self.gather(load))
         return self._bordered(stiffness.reshape(-1, 6, 6), solve)
+
+    def _first_factor(self, values):
+        """Factorise with a fill-reducing ordering, and keep that for all later matrices of the pattern."""
+        factors = splu(self._matrix(values), permc_spec="MMD_AT_PLUS_A", **SYMMETRIC)
+        order = np.argsort(factors.perm_c)
+        numbered = self._matrix(np.arange(1.0, len(values) + 1))[order][:, order]
+        numbered.sort_indices()
+        self._ordering = order, numbered.data.astype(int) - 1, numbered.indices, numbered.indptr
+        return factors.solve
+
+    def _next_factor(self, values):
+        order, entries, indices, pointers = self._ordering
+        matrix = sparse.csc_matrix((values[entries], indices, pointers), shape=(self.size, self.size))
+        factors = splu(matrix, permc_spec="NATURAL", **SYMMETRIC)
+
+        def solve(load):
+            solution = np.empty_like(load)
+            solution[order] = factors.solve(load[order])
+            return solution
+
+        return solve
+
+    def _matrix(self, values):
+        return sparse.csc_matrix((values, self._indices, self._pointers), shape=(self.size, self.size))
 
     def _bordered(self, stiffness, solve):
         """Eliminate the sparse unknowns, then the few borders."""
