@@ -12,11 +12,12 @@ from dataclasses import dataclass, field
 import numpy as np
 from scipy import special
 
-from ductsolve.errors import SectionError
+from ductsolve.errors import SectionError, is_finite_number
 from ductsolve.mesh.curves import EllipseArc
 from ductsolve.mesh.triangles import Boundary, Mesh, mesh_from_corners
 
 LARGEST_ECCENTRICITY = 0.99
+MOST_SLENDER_ELLIPSE = 1e5  # beyond, nodes at its tips cannot be told apart
 FEWEST_SECTORS, MOST_SECTORS = 8, 64
 
 
@@ -102,6 +103,11 @@ def circle(diameter: float) -> Section:
 def ellipse(width: float, height: float) -> Section:
     """Ellipse centred on the origin, ``width`` along x and ``height`` along y [m]."""
     width, height = _lengths(width=width, height=height)
+    if max(width, height) > MOST_SLENDER_ELLIPSE * min(width, height):
+        raise SectionError(
+            f"an ellipse of {width:g} m x {height:g} m is too slender; one side may exceed the other "
+            f"{MOST_SLENDER_ELLIPSE:g} times"
+        )
     half = (width / 2, height / 2)
     wall = EllipseArc((0.0, 0.0), half)
     boundaries = (
@@ -169,6 +175,14 @@ def annulus(outer_diameter: float, inner_diameter: float, eccentricity: float = 
         copies=_SIDE_BY_SIDE,
         **common,
     )
+
+
+def check_section(section) -> None:
+    """Refuse what is no section."""
+    if not isinstance(section, Section):
+        raise SectionError(
+            f"section must come from rectangle(...), annulus(...) or the like, found {section!r}"
+        )
 
 
 # --- copies -----------------------------------------------------------------------------------------
@@ -320,8 +334,8 @@ def _angles(c, mapped_gap, largest_turn=math.pi / 10, largest_gap_ratio=1.7):
 
 
 def _number(name, value):
-    if isinstance(value, bool | str) or not np.isscalar(value) or not np.isfinite(value):
-        raise SectionError(f"{name} must be a finite number, found {value!r}")
+    if not is_finite_number(value):
+        raise SectionError(f"{name} must be a plain finite number, found {value!r}")
     return float(value)
 
 

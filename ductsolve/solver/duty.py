@@ -11,6 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ductsolve.errors import DutyError
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.fields import Level, size
@@ -26,6 +27,7 @@ from ductsolve.solver.rate import (
     response,
     tilted_bracket,
 )
+from ductsolve.solver.startup import start_up_gradient
 
 Bracket = tuple[float, float]
 
@@ -36,6 +38,10 @@ UNKNOWN: Bracket = (0.0, math.inf)
 MOVE_LEFT = 0.4  # of an estimate's last move: what it may still move
 LEAST_LEFT = 0.4  # of the spread: what it may always still move
 MOST_CORRECTIONS = 30
+START_UP_FROM = 600  # triangles
+START_UP_ACCURACY = 2e-3
+NEAR_START_UP = 1.05  # gradients up to so many times the start-up gradient are bracketed from below by it
+SMALLEST_POTENTIAL = 1e-280  # [W/m]
 CEILING_STEPS = (0.003, 0.01, 0.03, 0.1, 0.3)
 FIRST_SLACK = 0.01
 SLACK = 0.1  # of the half-width that is expected
@@ -95,7 +101,9 @@ class _Duty:
         self._move = 0.0
 
     def _relax(self, level: Level, psi, gradient: float) -> Iterate:
-        return relax(level, self.fluid, gradient, psi, self.goal, self.picard)
+        iterate = relax(level, self.fluid, gradient, psi, self.goal, self.picard)
+        _check_range(self.fluid, iterate.bracket.high)
+        return iterate
 
     def _aim(self, iterate: Iterate, wanted: float):
         """Hope for the gap wanted, but not for more than a level usually brings."""
@@ -133,6 +141,14 @@ class _Duty:
             return spread
         self._move = max(abs(before / estimate - 1), self._move / 4)
         return float(np.clip(MOVE_LEFT * self._move, LEAST_LEFT * spread, spread))
+
+
+def _check_range(fluid: Fluid, potential: float):
+    """Refuse a flow whose shear rates leave the range of numbers, by its potential [W/m]."""
+    small = potential < SMALLEST_POTENTIAL
+    if not np.isfinite(potential) or (small and fluid.yield_stress == 0):
+        extreme = "small" if small else "large"
+        raise DutyError(f"shear rates too {extreme} for numbers; check the units of duty, fluid and section")
 
 
 def stress_flow(iterate: Iterate) -> float:
@@ -202,6 +218,7 @@ class GradientWanted(_Duty):
         super().__init__(section, fluid, accuracy, picard)
         self.flow_rate = flow_rate
         self.gradient = first_gradient(section, fluid, flow_rate)
+        self._floor: float | None = None
         self.slack = FIRST_SLACK  # how far ln(gradient) may stay from its aim on the next level
 
     def answer(self, level: Level, psi, final: bool = False) -> Answer:
@@ -216,9 +233,12 @@ class GradientWanted(_Duty):
         local = bend.a / (iterate.gradient * iterate.flow)  # d ln Q / d ln G
         tilted, direct = self._expected(iterate, bend)
         self.slack = min(max(SLACK * min(tilted, direct), SLACK * self.accuracy), FIRST_SLACK)
+        floor = self._start_up(level)
         bracket = UNKNOWN
-        if final or min(tilted, direct) <= PROMISING * self.accuracy:
+        near = iterate.gradient < NEAR_START_UP * floor
+        if final or near or min(tilted, direct) <= PROMISING * self.accuracy:
             bracket = self._tilted(iterate, bend) if tilted <= direct else self._direct(iterate, bend)
+            bracket = max(bracket[0], floor), bracket[1]
         wanted = max(
             gap_wanted(iterate, bend, self.accuracy / self.fluid.exponent_bound),
             gap_wanted_by_energy(iterate, bend, self.accuracy),
@@ -241,6 +261,14 @@ class GradientWanted(_Duty):
         below = self.gradient * (self.flow_rate / high) ** n
         self._aim(iterate, 2 * self.accuracy / n)
         return Answer(iterate, gradient, (below, above), self._settled(gradient, n * spread))
+
+    def _start_up(self, level) -> float:
+        """Gradient below which a yield-stress fluid rests [Pa/m], proved once the mesh is fine enough for the
+        proof to be cheap beside the flow; 0 before."""
+        if self._floor is None and self.fluid.yield_stress and len(level.mesh.triangles) >= START_UP_FROM:
+            found = start_up_gradient(self.section, self.fluid.yield_stress, accuracy=START_UP_ACCURACY)
+            self._floor = found.bracket[0]
+        return self._floor or 0.0
 
     def _expected(self, iterate, bend):
         """Expected relative half-widths by the two ways."""

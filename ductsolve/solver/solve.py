@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import math
 import warnings
 from collections.abc import Callable
 
 import numpy as np
 
-from ductsolve.errors import DuctsolveWarning, DutyError, FluidError, SectionError
+from ductsolve.errors import DuctsolveWarning, DutyError, FluidError, SectionError, is_finite_number
 from ductsolve.mesh.sections import Section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.duty import Answer, FlowRateWanted, GradientWanted
@@ -65,13 +64,20 @@ def solve(
     """
     _check_objects(section, fluid)
     _check(pressure_gradient, flow_rate, accuracy, method)
-    if not _is_number(triangle_budget) or triangle_budget < 1:
+    if not is_finite_number(triangle_budget) or triangle_budget < 1:
         raise DutyError(f"triangle_budget must be a positive number, found {triangle_budget!r}")
     picard = method == "picard"
     if pressure_gradient is not None:
         duty = FlowRateWanted(section, fluid, float(pressure_gradient), accuracy, picard)
     else:
         duty = GradientWanted(section, fluid, float(flow_rate), accuracy, picard)
+    # Overflow and underflow are looked for in the potential; numpy need not warn of them.
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        return _march(section, duty, accuracy, triangle_budget, progress)
+
+
+def _march(section, duty, accuracy, triangle_budget, progress) -> DuctFlow:
+    """Level after level until the bracket is narrow enough or the budget used up."""
     level, psi, history, faint = first_level(section), None, [], False
     while True:
         last = _last(level, triangle_budget, faint)
@@ -193,13 +199,9 @@ def _check(pressure_gradient, flow_rate, accuracy, method):
         found = "both" if given else "neither"
         raise DutyError(f"give exactly one of pressure_gradient and flow_rate; found {found}")
     for name, value in given.items():
-        if not _is_number(value) or value <= 0:
+        if not is_finite_number(value) or value <= 0:
             raise DutyError(f"{name} must be a positive finite number in SI units, found {value!r}")
-    if not _is_number(accuracy) or not NARROWEST <= accuracy < 1:
+    if not is_finite_number(accuracy) or not NARROWEST <= accuracy < 1:
         raise DutyError(f"accuracy must lie between {NARROWEST:g} and 1 (0.01 is 1 %), found {accuracy!r}")
     if method not in METHODS:
         raise DutyError(f"method must be one of {', '.join(METHODS)}, found {method!r}")
-
-
-def _is_number(value) -> bool:
-    return isinstance(value, int | float | np.number) and not isinstance(value, bool) and math.isfinite(value)

@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 
 import numpy as np
 
-from ductsolve.errors import DutyError, FluidError
-from ductsolve.mesh.sections import Section
+from ductsolve.errors import DutyError, FluidError, is_finite_number
+from ductsolve.mesh.sections import Section, check_section
 from ductsolve.rheology.fluid import Fluid
 from ductsolve.solver.fields import Level
 from ductsolve.solver.levels import dominant, first_level
@@ -73,10 +72,12 @@ def start_up_gradient(section: Section, yield_stress: float, *, accuracy: float 
     FluidError, DutyError
         when the yield stress is not positive or the accuracy out of range
     """
-    if not (isinstance(yield_stress, int | float) and math.isfinite(yield_stress) and yield_stress > 0):
+    check_section(section)
+    if not is_finite_number(yield_stress) or yield_stress <= 0:
         raise FluidError(f"yield_stress must be positive and finite [Pa], found {yield_stress!r}")
-    if not (isinstance(accuracy, int | float) and 1e-5 <= accuracy < 1):
+    if not is_finite_number(accuracy) or not 1e-5 <= accuracy < 1:
         raise DutyError(f"accuracy must lie between 1e-05 and 1 (0.01 is 1 %), found {accuracy!r}")
+    yield_stress = float(yield_stress)
     for found in limit_levels(section, AIM * accuracy):
         if found.high - found.low <= AIM * accuracy * (found.high + found.low):
             break
