@@ -335,7 +335,7 @@ def _angles(c, mapped_gap, largest_turn=math.pi / 10, largest_gap_ratio=1.7):
 
 def _number(name, value):
     if not is_finite_number(value):
-        raise SectionError(f"{name} must be a plain finite number, found {value!r}")
+        raise SectionError(f"{name} must be a finite number, found {value!r}")
     return float(value)
 
 

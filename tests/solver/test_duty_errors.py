@@ -10,7 +10,7 @@ import pytest
 from ductsolve.errors import DuctsolveError, DutyError, SectionError
 from ductsolve.mesh.outline import polygon
 from ductsolve.mesh.sections import annulus, circle, ellipse, rectangle
-from ductsolve.rheology.laws import Newtonian
+from ductsolve.rheology.laws import Newtonian, PowerLaw
 from ductsolve.solver.solve import solve
 
 SECTION, FLUID = circle(1.0), Newtonian(1.0)
@@ -100,3 +100,17 @@ def test_sections_that_cannot_be(name):
         make()
     assert words in str(caught.value)
     assert "\n" not in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    "duty",
+    [
+        {"pressure_gradient": 1e-300},
+        {"pressure_gradient": 1e300},
+        {"flow_rate": 1e-300},
+        {"flow_rate": 1e300},
+    ],
+)
+def test_shear_rates_beyond_numbers_are_refused(duty):
+    with pytest.raises(DutyError, match="shear rates too (small|large) for numbers"):
+        solve(circle(0.02), PowerLaw(1.0, 0.5), **duty)

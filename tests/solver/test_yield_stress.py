@@ -10,6 +10,7 @@ import exact_flows as exact
 import numpy as np
 import pytest
 from published_data import row
+from scipy.optimize import brentq
 
 from ductsolve.mesh.outline import polygon
 from ductsolve.mesh.sections import annulus, circle, ellipse, rectangle
@@ -219,3 +220,21 @@ def test_plug_of_an_annulus(law):
 def test_no_plug_without_yield_stress():
     flow = solve(SECTIONS["square"], Bingham(0.0, 1.0), pressure_gradient=1.0)
     assert flow.plug.proved == flow.plug.apparent == 0
+
+
+@pytest.mark.parametrize("flow_rate", [1e-12, 1e-8])
+def test_a_trickle_takes_little_more_than_the_start_up_gradient(flow_rate):
+    """Buckingham (1921) and Reiner (1926), solved for the gradient."""
+    radius, law = 0.01, Bingham(10.0, 0.01)
+
+    def excess(gradient):
+        phi = 2 * law.yield_stress / (gradient * radius)
+        viscous = math.pi * radius**4 * gradient / (8 * law.plastic_viscosity)
+        return viscous * (1 - 4 * phi / 3 + phi**4 / 3) - flow_rate
+
+    exact_gradient = brentq(excess, 2000 * (1 + 1e-12), 4000)
+    flow = solve(circle(2 * radius), law, flow_rate=flow_rate)
+    low, high = flow.pressure_gradient_bracket
+    assert flow.status is Status.ANSWERED
+    assert low <= exact_gradient <= high
+    assert half_width((low, high)) <= 0.01
