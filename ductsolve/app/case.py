@@ -134,10 +134,14 @@ def _section(table: Table, folder: Path) -> Section:
     if shape == "file":
         return _section_file(table, folder)
     lengths = [table.quantity(key, "length") for key in DIMENSIONS[shape]]
-    if shape == "annulus":
-        lengths.append(_eccentricity(table, *lengths))
     with blamed_on(table.place):
-        return getattr(sections, shape)(*lengths)
+        section = getattr(sections, shape)(*lengths)
+    key = next((key for key in optional if key in table), None)
+    if key is None:
+        return section
+    eccentricity = _eccentricity(table, *lengths)
+    with blamed_on(table.where(key)):
+        return sections.annulus(*lengths, eccentricity)
 
 
 def _eccentricity(table: Table, outer: float, inner: float) -> float:
@@ -145,14 +149,8 @@ def _eccentricity(table: Table, outer: float, inner: float) -> float:
     if "eccentricity" in table and "offset" in table:
         raise table.error("gives both eccentricity and offset, which say the same; keep one")
     if "eccentricity" in table:
-        value = table.number("eccentricity")
-        if not 0 <= value <= 1:
-            raise table.error(f"{value:g} is not between 0 (concentric) and 1 (touching)", "eccentricity")
-        return value
-    offset = table.quantity("offset", "length", zero=True) if "offset" in table else 0.0
-    gap = (outer - inner) / 2
-    if gap <= 0:
-        return 0.0  # the annulus itself says what is wrong
+        return table.number("eccentricity")
+    offset, gap = table.quantity("offset", "length", zero=True), (outer - inner) / 2
     if offset > gap:
         raise table.error(f"{offset:g} m exceeds the mean gap of {gap:g} m: the circles cross", "offset")
     return offset / gap

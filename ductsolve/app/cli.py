@@ -83,6 +83,9 @@ def main(argv: Sequence[str] | None = None) -> int:
     except click.Abort:
         _say("ductsolve: stopped; nothing was written", err=True)
         return STOPPED
+    except click.exceptions.NoArgsIsHelpError as error:  # its message is the help page
+        _say(error.format_message(), err=True)
+        return BAD_INPUT
     except click.UsageError as error:
         hint = f" (try: {error.ctx.command_path} --help)" if error.ctx else ""
         return _refuse(error.format_message() + hint)

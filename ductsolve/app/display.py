@@ -90,7 +90,7 @@ class Display:
         si, kind = SI[quantity]
         if not math.isfinite(typical):
             return ReportUnit(quantity, si, 1.0)
-        unit = units.show(typical, si).split(" ", 1)[1]
+        unit = units.suiting(typical, si)
         return ReportUnit(quantity, unit, 1 / units.scale(unit, kind))
 
     def both(

@@ -61,6 +61,30 @@ def _parts(n):
     return np.array(upright + inverted)
 
 
+def smoothed(mesh: Mesh, nodal: np.ndarray) -> np.ndarray:
+    """Values (n_points,) at the nodes of a mesh without the scatter from one triangle to the next.
+
+    Around every corner a quadratic is fitted by least squares to the nodes of the triangles that meet
+    there; the fits are averaged. A quadratic comes through unchanged. A mesh too fine for its triangles
+    to show is left as it is.
+    """
+    if len(mesh.triangles) > MOST_TRIANGLES:
+        return nodal
+    corner, count = mesh.triangles[:, :3], len(mesh.points)
+    offset = mesh.points[mesh.triangles][:, None] - mesh.points[corner][:, :, None]
+    reach = np.zeros(count)
+    np.maximum.at(reach, corner, np.abs(offset).max(axis=(2, 3)))
+    x, y = np.moveaxis(offset / reach[corner][:, :, None, None], -1, 0)
+    powers = np.stack([np.ones_like(x), x, y, x * x, x * y, y * y], axis=-1)
+    matrix, right = np.zeros((count, 6, 6)), np.zeros((count, 6))
+    np.add.at(matrix, corner, np.einsum("tckp,tckq->tcpq", powers, powers))
+    np.add.at(right, corner, np.einsum("tckp,tk->tcp", powers, nodal[mesh.triangles]))
+    fits = np.einsum("npq,nq->np", np.linalg.pinv(matrix, hermitian=True), right)
+    values = np.einsum("tckp,tcp->tk", powers, fits[corner]) / 3
+    node = mesh.triangles.ravel()
+    return np.bincount(node, values.ravel(), count) / np.maximum(np.bincount(node, minlength=count), 1)
+
+
 def wall_pieces(flow: DuctFlow) -> np.ndarray:
     """Wall edges (n, k, 2) in the order of the flow's wall shear."""
     return _sampled(flow.mesh.points[flow.mesh.edges[flow.wall_shear.edge]])

@@ -15,8 +15,9 @@ import numpy as np
 from ductsolve import __version__
 from ductsolve.app.job import Outcome
 from ductsolve.app.reading import LIMITS, REYNOLDS
-from ductsolve.post.along_wall import distance_along
+from ductsolve.post.along_wall import distance_along, wall_loops
 from ductsolve.post.shear import nodal_shear_stress
+from ductsolve.rheology.tabulated import FlowCurve
 from ductsolve.solver.flow import DuctFlow
 
 WALL_COLUMNS = ("x [m]", "y [m]", "length [m]", "stress [Pa]", "distance along wall [m]", "loop", "wall")
@@ -150,11 +151,11 @@ def _section(flow):
 
 def _fluid(flow, density):
     law = flow.fluid
-    return {
-        "law": law.law_name,
-        "parameters": {label: value for label, value, _ in law.describe()},
-        "density": density,
-    }
+    content = {"law": law.law_name, "density": density}
+    if isinstance(law, FlowCurve):
+        points = {"shear_rate": law.shear_rate, "shear_stress": law.shear_stress}
+        return {**content, "number_of_points": len(law.shear_rate), "points": points}
+    return {**content, "parameters": {label: value for label, value, _ in law.describe()}}
 
 
 def _level(record):
@@ -168,18 +169,19 @@ def _level(record):
 
 
 def wall_shear_csv(flow: DuctFlow) -> str:
-    """Wall shear map as CSV, a line for each piece of wall in the order of a walk along it."""
+    """Wall shear map as CSV: loop by loop, a line for each piece of wall in the order of the walk."""
     wall = flow.wall_shear
+    rows = np.concatenate([loop.rows for loop in wall_loops(wall)])
     text = io.StringIO()
     writer = csv.writer(text, lineterminator="\n")
     writer.writerow(WALL_COLUMNS)
     columns = zip(
-        *wall.position.T.tolist(),
-        wall.length.tolist(),
-        wall.stress.tolist(),
-        distance_along(wall).tolist(),
-        wall.loop.tolist(),
-        (wall.names[index] for index in wall.wall),
+        *wall.position[rows].T.tolist(),
+        wall.length[rows].tolist(),
+        wall.stress[rows].tolist(),
+        distance_along(wall)[rows].tolist(),
+        wall.loop[rows].tolist(),
+        (wall.names[index] for index in wall.wall[rows]),
         strict=True,
     )
     writer.writerows(columns)

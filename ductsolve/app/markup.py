@@ -9,7 +9,8 @@ from collections.abc import Sequence
 
 from ductsolve.app.summary import Block, Row
 
-_POWER = re.compile(r"\^(?:\(([^()]+)\)|(-?\w+(?:\.\w+)?))")
+# In brackets, which may hold others, or a single number or word.
+_POWER = re.compile(r"\^(?:\(((?:[^()]|\([^()]*\))+)\)|(-?\w+(?:\.\w+)?))")
 
 
 def escaped(text: str) -> str:

@@ -16,7 +16,7 @@ from matplotlib.ticker import MaxNLocator
 from ductsolve.app.case import ReportUnit
 from ductsolve.app.colours import HATCH, INK, MESH, STRESS, VELOCITY
 from ductsolve.app.display import Display, figures
-from ductsolve.app.drawing import Drawing, drawing, mesh_lines, wall_pieces
+from ductsolve.app.drawing import Drawing, drawing, mesh_lines, smoothed, wall_pieces
 from ductsolve.app.views import View, view_of
 from ductsolve.post.along_wall import wall_loops
 from ductsolve.post.shear import nodal_shear_stress
@@ -26,7 +26,7 @@ PAGE_WIDTH = 7.2  # inches
 LOWEST, TALLEST = 2.6, 6.6
 SMALL, NORMAL = 8, 9  # points
 RESOLUTION = 150  # dots per inch
-LEVELS = 12
+LEVELS, MOST_TICKS = 12, 10
 FEW_LINES, MANY_LINES = 2_000, 6_000  # more are drawn thinner, and stored as a bitmap
 MOST_NAMES = 8
 FARTHEST = 0.01  # of the picture: walls that lie so little nearer also count as farthest out
@@ -89,11 +89,12 @@ def velocity_picture(of: Scene) -> Figure:
     """Axial velocity in filled contours, what looks unyielded hatched."""
     unit = of.display.unit("velocity", of.flow.max_velocity)
     velocity = of.mesh.values(of.flow.velocity) * unit.per_si
-    levels = np.linspace(0.0, float(velocity.max()) or 1.0, LEVELS + 1)
+    levels = MaxNLocator(LEVELS).tick_values(0.0, float(velocity.max()) or 1.0)
     velocity = np.clip(velocity, 0.0, levels[-1])
     yields = of.flow.fluid.yield_stress > 0
     # The stress is linear on a triangle, so its square is what the quadratic shape functions carry.
-    squared = of.mesh.values(nodal_shear_stress(of.flow) ** 2) if yields else None
+    nodal = smoothed(of.flow.mesh, nodal_shear_stress(of.flow) ** 2) if yields else None
+    squared = of.mesh.values(nodal) if yields else None
     points, triangles, source = of.view.triangles(of.mesh.points, of.mesh.triangles)
 
     def draw(axes: Axes):
@@ -168,7 +169,9 @@ def _figure(of: Scene, draw: Callable, title: str, colour_label: str = "", curve
         _frame(axes, of.view, of.view.end, true_scale=True)
         axes.set_title("One end at true scale", fontsize=NORMAL, loc="left", color=INK)
     if coloured is not None:
-        bar = figure.colorbar(coloured, ax=[whole, *end], aspect=30, pad=0.02, ticks=MaxNLocator(8))
+        bands = getattr(coloured, "levels", None)  # of filled contours; round, and every other named
+        ticks = MaxNLocator(8) if bands is None else bands[:: 1 + len(bands) // MOST_TICKS]
+        bar = figure.colorbar(coloured, ax=[whole, *end], aspect=30, pad=0.02, ticks=ticks)
         bar.set_label(colour_label, fontsize=NORMAL, color=INK)
         bar.ax.tick_params(labelsize=SMALL)
     if of.view.stretched:

@@ -31,6 +31,7 @@ PLUG = (
     " Proved nearly rigid: certainly sheared more slowly than {rate} 1/s, which is 1 % of"
     " 8 x mean velocity / hydraulic diameter."
 )
+NONE_PROVED = "none at this accuracy; a smaller one may prove more"
 HYDRAULIC_DIAMETER = "The hydraulic diameter is 4 x area / wetted perimeter."
 
 LIMITS = {

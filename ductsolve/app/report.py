@@ -8,7 +8,7 @@ from collections.abc import Mapping
 from ductsolve import __version__
 from ductsolve.app.job import Outcome
 from ductsolve.app.markup import block_html, picture_html
-from ductsolve.app.summary import display_of, history_block, summary
+from ductsolve.app.summary import display_of, flow_curve_block, history_block, summary
 
 LARGEST_DRAWING = 700_000  # bytes; heavier SVG pictures make room for their bitmap
 
@@ -66,9 +66,11 @@ def report(outcome: Outcome, pictures: Mapping[str, Mapping[str, bytes]]) -> str
     """
     warnings, inputs, answer, *rest = _with_warnings(outcome)
     shown = [_shown(block, outcome, pictures) for block in (answer, inputs, *rest[:-2])]
+    curve = flow_curve_block(outcome.flow.fluid)
     parts = [
         warnings,
         *shown,
+        *([block_html(curve)] if curve.rows else []),
         block_html(history_block(outcome.flow)),
         *(block_html(block) for block in rest[-2:]),
     ]

@@ -8,8 +8,10 @@ from typing import NamedTuple
 import numpy as np
 
 from ductsolve.app import reading
-from ductsolve.app.display import SI, Display, digits_for, figures, half_width_text, percent
+from ductsolve.app.display import MOST_DIGITS, SI, Display, digits_for, figures, half_width_text, percent
 from ductsolve.app.job import Outcome
+from ductsolve.rheology.fluid import Fluid
+from ductsolve.rheology.tabulated import FlowCurve
 from ductsolve.solver.flow import DuctFlow, Status
 from ductsolve.solver.wall import CORNER_DISTANCE
 
@@ -73,7 +75,7 @@ def extent_of(flow: DuctFlow) -> float:
 
 def warning_block(outcome: Outcome) -> Block:
     """Warnings, and an answer that falls short."""
-    short = () if outcome.settled else (f"not the accuracy asked: {outcome.flow.status.value}",)
+    short = () if outcome.settled else (outcome.flow.status.value,)
     return Block("warnings", notes=tuple(text[0].upper() + text[1:] for text in (*short, *outcome.warnings)))
 
 
@@ -143,10 +145,11 @@ def _wanted_rows(outcome, display, quantity, per_unit=1.0, label=""):
 
 
 def _accuracy_rows(outcome):
-    asked = f"asked +/- {percent(outcome.case.accuracy, 4)}"
+    asked = f"(asked +/- {percent(outcome.case.accuracy, 4)})"
+    error = percent(outcome.flow.estimated_error)
     return [
-        Row("  width of that bracket", (half_width_text(outcome.half_width), asked)),
-        Row("  estimated error", (percent(outcome.flow.estimated_error), "of the estimate, not guaranteed")),
+        Row("  half-width of that bracket", (f"{half_width_text(outcome.half_width)} {asked}",)),
+        Row("  estimated error", (f"{error} of the estimate, not guaranteed",)),
     ]
 
 
@@ -172,9 +175,9 @@ def velocity_block(outcome: Outcome, display: Display) -> Block:
         return Block("velocity")
     mean = outcome.flow.mean_velocity
     rows = (
-        Row("mean", display.both(mean, "velocity", 4)),
-        Row("largest", display.both(outcome.flow.max_velocity, "velocity", 4)),
-        Row("largest over mean", (figures(outcome.flow.max_velocity / mean, 4),)),
+        Row("mean", display.both(mean, "velocity", 4, padded=True)),
+        Row("largest", display.both(outcome.flow.max_velocity, "velocity", 4, padded=True)),
+        Row("largest over mean", (figures(outcome.flow.max_velocity / mean, 4, padded=True),)),
     )
     return Block("velocity", rows)
 
@@ -183,14 +186,14 @@ def wall_block(flow: DuctFlow, display: Display) -> Block:
     """Wall shear stress: smallest, mean, largest, and where."""
     wall = flow.wall_shear
     if flow.flow_rate <= 0:
-        rows = (Row("mean", display.both(wall.mean, "stress", 4)),)
+        rows = (Row("mean", display.both(wall.mean, "stress", 4, padded=True)),)
         return Block("wall shear stress", rows, notes=(reading.MEAN_STRESS, reading.STRESS_AT_REST))
     if wall.stress.max() - wall.min < UNIFORM * wall.mean:
-        rows = (Row("everywhere", display.both(wall.mean, "stress", 4)),)
+        rows = (Row("everywhere", display.both(wall.mean, "stress", 4, padded=True)),)
         return Block("wall shear stress", rows, notes=(reading.MEAN_STRESS,))
     rows = [
         *_stress_rows("smallest", *wall.smallest, wall, display),
-        Row("mean", display.both(wall.mean, "stress", 4)),
+        Row("mean", display.both(wall.mean, "stress", 4, padded=True)),
     ]
     notes = [reading.MEAN_STRESS, reading.WALL_PIECES]
     if len(wall.corners):
@@ -215,7 +218,7 @@ def _corner_rows(wall, display):
 def _stress_rows(label, stress, position, wall, display):
     at = int(np.argmin(np.linalg.norm(wall.position - position, axis=1)))
     where = f"{display.place(position)}, {wall.names[wall.wall[at]]}"
-    return [Row(label, display.both(stress, "stress", 4)), Row("  at", (where,))]
+    return [Row(label, display.both(stress, "stress", 4, padded=True)), Row("  at", (where,))]
 
 
 def plug_block(flow: DuctFlow) -> Block:
@@ -223,9 +226,10 @@ def plug_block(flow: DuctFlow) -> Block:
     if flow.fluid.yield_stress == 0 or flow.flow_rate <= 0:
         return Block("plug")
     plug = flow.plug
+    proved = f"{percent(plug.proved, 3)} of the area" if plug.proved else reading.NONE_PROVED
     rows = (
         Row("looks unyielded", (f"{percent(plug.apparent, 3)} of the area",)),
-        Row("proved nearly rigid", (f"{percent(plug.proved, 3)} of the area",)),
+        Row("proved nearly rigid", (proved,)),
     )
     note = reading.PLUG.format(rate=figures(plug.slow_rate, 3))
     return Block("plug", rows, notes=(note,))
@@ -235,9 +239,11 @@ def regime_block(outcome: Outcome) -> Block:
     """Reynolds numbers and whether laminar flow is to be expected."""
     title = "Reynolds number"
     if outcome.case.density is None:
-        return Block(title, (Row("Reynolds number", ("not worked out: no density given",)),))
+        return Block(title, (Row("generalised, by friction", ("not worked out: no density given",)),))
     if outcome.regime is None:
-        return Block(title, (Row("Reynolds number", ("0: nothing flows, by the best estimate",)),))
+        proved = outcome.flow.status is Status.NO_FLOW
+        why = "0: nothing flows" if proved else "0: nothing flows, by the best estimate"
+        return Block(title, (Row("generalised, by friction", (why,)),))
     found = outcome.regime
     factors = f"a = {figures(found.factors.a, 3)}, b = {figures(found.factors.b, 3)}"
     if found.law is None:
@@ -281,8 +287,8 @@ def section_block(outcome: Outcome, display: Display) -> Block:
 def _powers(value, length, si, power):
     suffix = f"^{power}" if power > 1 else ""
     texts = [
-        f"{figures(value)} {si}{suffix}",
-        f"{figures(value * length.per_si**power)} {length.unit}{suffix}",
+        f"{figures(value, padded=True)} {si}{suffix}",
+        f"{figures(value * length.per_si**power, padded=True)} {length.unit}{suffix}",
     ]
     return tuple(texts) if length.unit != si else (texts[0],)
 
@@ -300,6 +306,17 @@ def work_block(outcome: Outcome) -> Block:
         Row("time", (f"{figures(outcome.seconds, 2)} s",)),
     )
     return Block("computation", rows)
+
+
+def flow_curve_block(fluid: Fluid) -> Block:
+    """The points of a flow curve, for fluids given by one."""
+    if not isinstance(fluid, FlowCurve):
+        return Block("flow curve")
+    rows = tuple(
+        Row(f"point {number}", (f"{figures(rate, MOST_DIGITS)} 1/s", f"{figures(stress, MOST_DIGITS)} Pa"))
+        for number, (rate, stress) in enumerate(zip(fluid.shear_rate, fluid.shear_stress, strict=True), 1)
+    )
+    return Block("flow curve", rows, ("shear rate", "shear stress"))
 
 
 def history_block(flow: DuctFlow) -> Block:

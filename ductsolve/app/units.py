@@ -95,11 +95,6 @@ def scale(unit: str, kind: str, *, where: str = "unit") -> float:
         raise CaseError(f"{where}: {refusal}") from None
 
 
-def convert(value: float, unit: str, kind: str, *, where: str = "unit") -> float:
-    """Express ``value``, given in the SI unit of ``kind``, in ``unit``."""
-    return value / scale(unit, kind, where=where)
-
-
 def parse_share(value: object, *, where: str) -> float:
     """Read a share between 0 and 1, written ``"1 %"`` or ``0.01``."""
     try:
@@ -131,33 +126,21 @@ def measures(unit: str, kind: str) -> bool:
         return False
 
 
-# --- writing -----------------------------------------------------------------------------------------
+# --- showing -----------------------------------------------------------------------------------------
 
-# SI unit -> (kind, units to show it in, each with the least SI value it is used for, largest first).
+# SI unit -> units to show it in, each with the least SI value it is used for, largest first.
 _LADDERS = {
-    "m": ("length", (("m", 1.0), ("mm", 0.0))),
-    "m/s": ("velocity", (("m/s", 0.1), ("mm/s", 0.0))),
-    "Pa": ("stress", (("MPa", 1e6), ("kPa", 1e3), ("Pa", 0.0))),
-    "Pa/m": ("pressure gradient", (("MPa/m", 1e6), ("kPa/m", 1e3), ("Pa/m", 0.0))),
-    "Pa.s": ("viscosity", (("Pa.s", 1.0), ("mPa.s", 0.0))),
-    "m^3/s": ("volume flow", (("m^3/h", 0.2), ("L/min", 1e-6), ("mL/min", 0.0))),
-    "kg/s": ("mass flow", (("kg/s", 1.0), ("kg/h", 0.0))),
+    "m": (("m", 1.0), ("mm", 0.0)),
+    "m/s": (("m/s", 0.1), ("mm/s", 0.0)),
+    "Pa": (("MPa", 1e6), ("kPa", 1e3), ("Pa", 0.0)),
+    "Pa/m": (("MPa/m", 1e6), ("kPa/m", 1e3), ("Pa/m", 0.0)),
+    "m^3/s": (("m^3/h", 0.2), ("L/min", 1e-6), ("mL/min", 0.0)),
 }
 
 
-def show(value: float, unit: str, digits: int = 5) -> str:
-    """Write a number and its unit, moving an SI unit of ``KINDS`` to the multiple that reads best."""
-    if unit in _LADDERS and math.isfinite(value):
-        kind, rungs = _LADDERS[unit]
-        unit = next(name for name, least in rungs if abs(value) >= least)
-        value = convert(value, unit, kind)
-    return f"{show_number(value, digits)} {unit}".rstrip()
-
-
-def show_number(value: float, digits: int = 5) -> str:
-    """Write a number to ``digits`` significant digits, without a power of ten where that stays short."""
-    rounded = float(f"{value:.{digits}g}")
-    return re.sub(r"e([+-])0*", r"e\1", f"{rounded:.7g}").replace("e+", "e")
+def suiting(value: float, unit: str) -> str:
+    """Multiple of an SI unit in which a value of that unit reads best."""
+    return next(name for name, least in _LADDERS[unit] if abs(value) >= least)
 
 
 # --- reading -----------------------------------------------------------------------------------------

@@ -328,9 +328,11 @@ def test_two_duties_are_both_named(tmp_path):
 @pytest.mark.parametrize(
     ("section", "message"),
     [
-        (ANNULUS + "eccentricity = 1.2", "[section] eccentricity: 1.2 is not between 0"),
+        (ANNULUS + "eccentricity = 1.2", "[section] eccentricity: eccentricity 1.2 must lie between 0 "),
         (ANNULUS + 'eccentricity = "0.5"', "[section] eccentricity: found text where a plain number belongs"),
         (ANNULUS + 'eccentricity = 0.5\noffset = "1 mm"', "[section]: gives both eccentricity and offset"),
+        (ANNULUS + "eccentricity = -0.1", "[section] eccentricity: eccentricity -0.1 must lie between 0 "),
+        (ANNULUS + 'offset = "9.95 mm"', "[section] offset: eccentricity 0.995 must lie between 0 "),
         (ANNULUS + 'offset = "11 mm"', "[section] offset: 0.011 m exceeds the mean gap of 0.01 m"),
         (ANNULUS.replace("40", "70"), "[section]: outer_diameter 0.06 m must exceed inner_diameter 0.07 m"),
         (ANNULUS.replace("40", "70") + 'offset = "1 mm"', "[section]: outer_diameter 0.06 m must exceed"),

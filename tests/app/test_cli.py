@@ -88,6 +88,12 @@ def test_all_files(tmp_path, capsys):
     assert all(name in listed for name in writing.file_names())
 
 
+def test_without_arguments_the_help_page(capsys):
+    code, out, err = run(capsys)
+    assert (code, out) == (2, "")
+    assert "\nOptions:\n" in err and "\nCommands:\n" in err and "ductsolve: " not in err
+
+
 def test_no_flow_is_an_answer(tmp_path, capsys):
     code, out, _ = run(capsys, "solve", write_case(tmp_path, "stuck"), "--out", tmp_path / "out")
     assert code == 0 and "no flow, proved" in out
@@ -100,7 +106,7 @@ def test_short_of_the_accuracy(tmp_path, capsys):
     case = write_case(tmp_path, "channel")
     code, _, err = run(capsys, "solve", case, "--accuracy", "0.01 %", "--triangles", 60)
     assert code == 3
-    assert err.startswith("ductsolve: Not the accuracy asked: bracket true but wider than asked")
+    assert err.startswith("ductsolve: Bracket true but wider than asked")
 
 
 def test_accuracy_from_the_command_line(tmp_path, capsys):

@@ -46,6 +46,12 @@ def test_json_holds_the_answer(outcomes):
     assert result["reynolds"]["why_not"] == "no density given"
 
 
+def test_json_holds_the_points_of_a_flow_curve(outcomes):
+    fluid = json.loads(files.result_json(outcomes("fast")))["fluid"]
+    assert fluid["points"] == {"shear_rate": [1, 3, 10], "shear_stress": [0.01, 0.03, 0.1]}
+    assert fluid["number_of_points"] == 3 and isinstance(fluid["number_of_points"], int)
+
+
 def test_json_says_unbounded(outcomes):
     wall = json.loads(files.result_json(outcomes("angle")))["wall_shear"]
     assert wall["max"] is None and wall["unbounded"] is True
@@ -78,6 +84,11 @@ def test_csv_balances_the_pressure(outcomes, name):
     )
     assert stress @ length == pytest.approx(flow.pressure_gradient * flow.section.area, rel=1e-9)
     assert length.sum() == pytest.approx(flow.section.perimeter, rel=1e-4)
+    loop = np.array([int(line["loop"]) for line in lines])
+    starts = np.flatnonzero(np.diff(loop, prepend=-1))
+    assert loop[starts].tolist() == sorted(set(loop))  # each loop once
+    assert distance[starts] == pytest.approx(length[starts] / 2)
+    assert ((np.diff(distance) > 0) == (np.diff(loop) == 0)).all()
     assert 0 < distance.min() and distance.max() < flow.section.perimeter
     assert {line["wall"] for line in lines} <= set(flow.wall_shear.names)
 

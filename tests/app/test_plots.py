@@ -10,7 +10,7 @@ import pytest
 from jobs import write_case
 
 from ductsolve.app import colours, job, plots
-from ductsolve.app.drawing import drawing, mesh_lines, wall_pieces
+from ductsolve.app.drawing import drawing, mesh_lines, smoothed, wall_pieces
 from ductsolve.app.summary import display_of
 from ductsolve.app.views import view_of
 
@@ -159,3 +159,12 @@ def test_ramps_darken_evenly(ramp):
     steps = -np.diff(lightness)
     assert (steps > 0).all()
     assert steps.max() < 2.5 * steps.mean()
+
+
+def test_smoothing_takes_out_scatter_and_keeps_a_quadratic(outcomes):
+    mesh = outcomes("channel").flow.mesh
+    x, y = mesh.points.T / np.ptp(mesh.points)
+    smooth = 1 + x - 2 * y + 3 * x * y + y**2
+    assert smoothed(mesh, smooth) == pytest.approx(smooth, rel=1e-6)
+    scatter = np.random.default_rng(1).normal(0, 0.01, len(smooth))
+    assert np.std(smoothed(mesh, smooth + scatter) - smooth) < 0.8 * np.std(scatter)

@@ -82,6 +82,12 @@ def test_the_bracket_closing_in(outcomes, channel):
     assert len(re.findall(r">level \d+<", channel)) == len(history)
 
 
+def test_the_points_of_a_flow_curve(outcomes, channel):
+    text = Page(report(outcomes("fast"), {})).text
+    assert re.search(r"point 1\s*1 1/s\s*0.01 Pa\s*point 2\s*3 1/s\s*0.03 Pa\s*point 3\s*10 1/s", text)
+    assert "Flow curve" not in channel
+
+
 def test_warnings_stand_out(outcomes, channel):
     fast = report(outcomes("fast"), {})
     assert fast.index('<section class="warnings">') < fast.index("<h2>Answer")
@@ -97,6 +103,8 @@ def test_without_pictures_or_flow(outcomes):
 def test_powers_are_raised():
     assert escaped("m^3/s") == "m<sup>3</sup>/s"
     assert escaped("8^(n-1) K") == "8<sup>n-1</sup> K"
+    raised = "(n + 2)<sup>(n + 2)/(n + 1)</sup> / (3n + 1)<sup>2</sup>"
+    assert escaped("(n + 2)^((n + 2)/(n + 1)) / (3n + 1)^2") == raised
     assert escaped("(3n + 1)^2.") == "(3n + 1)<sup>2</sup>."
     assert escaped("Pa.s^0.55 <b>") == "Pa.s<sup>0.55</sup> &lt;b&gt;"
 

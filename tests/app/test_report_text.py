@@ -57,7 +57,7 @@ def test_answer_with_its_bracket(outcomes, texts):
     assert low <= flow.flow_rate_bracket[0] <= flow.flow_rate <= flow.flow_rate_bracket[1] <= high
     assert high - low < 1.01 * (flow.flow_rate_bracket[1] - flow.flow_rate_bracket[0])
     assert cells(text, "best estimate", "Answer")[1].endswith("m3/h")
-    assert "not guaranteed" in cells(text, "estimated error")[1]
+    assert cells(text, "estimated error")[0].endswith("% of the estimate, not guaranteed")
     assert cells(text, "pressure drop over 25 m") == ["15000 Pa", "15 kPa"]
 
 
@@ -87,11 +87,12 @@ def test_no_flow(texts):
     assert "stays at or below the yield stress" in text
     assert "estimate" not in text[text.index("Answer") : text.index("Wall shear")]
     assert "Velocity" not in text
+    assert cells(text, "generalised, by friction") == ["0: nothing flows"]
 
 
 def test_reynolds_numbers(texts):
     channel, ring, fast = texts("channel"), texts("ring"), texts("fast")
-    assert cells(ring, "Reynolds number") == ["not worked out: no density given"]
+    assert cells(ring, "generalised, by friction") == ["not worked out: no density given"]
     assert cells(channel, "regime") == ["laminar flow is to be expected"]
     assert "tangent at the mean wall shear stress" in cells(channel, "power law in it")[1]
     assert cells(fast, "regime") == ["laminar flow is not to be expected"]
@@ -116,8 +117,8 @@ def test_an_answer_that_falls_short_says_so(tmp_path):
     outcome = job.run(write_case(tmp_path, "channel"), accuracy="0.01 %", triangles=100)
     assert not outcome.settled
     text = terminal.report_of(outcome)
-    assert "Not the accuracy asked" in text[: text.index("Inputs")]
-    assert cells(text, "width of that bracket")[1] == "asked +/- 0.01 %"
+    assert "Bracket true but wider than asked" in text[: text.index("Inputs")]
+    assert cells(text, "half-width of that bracket")[0].endswith(" (asked +/- 0.01 %)")
     assert cells(text, "duty accuracy")[0] == "0.01 % (command line)"
 
 

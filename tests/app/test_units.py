@@ -142,9 +142,9 @@ def test_numbers_are_rounded_once():
     value=st.floats(1e-9, 1e9),
     choice=st.sampled_from([(kind, unit) for kind, unit, _ in UNITS]),
 )
-def test_convert_and_parse_are_inverse(value, choice):
+def test_scale_and_parse_are_inverse(value, choice):
     kind, unit = choice
-    shown = units.convert(value, unit, kind)
+    shown = value / units.scale(unit, kind)
     assert units.parse(f"{shown!r} {unit}", kind, where="w") == pytest.approx(value, rel=1e-14)
 
 
@@ -303,34 +303,25 @@ def test_share_refused(text):
 
 
 @pytest.mark.parametrize(
-    ("value", "unit", "shown"),
+    ("value", "unit", "chosen"),
     [
-        (0.0123, "m", "12.3 mm"),
-        (1.25, "m", "1.25 m"),
-        (123456.0, "Pa/m", "123.46 kPa/m"),
-        (0.005, "m^3/s", "300 L/min"),
-        (1e-9, "m^3/s", "0.06 mL/min"),
-        (0.5, "m^3/s", "1800 m^3/h"),
-        (0.0, "m", "0 mm"),
-        (-2500.0, "Pa", "-2.5 kPa"),
-        (1 / 30, "kg/s", "120 kg/h"),
-        (math.nan, "m", "nan m"),
-        (1234.5678, "1/s", "1234.6 1/s"),
-        (99999.7, "1/s", "100000 1/s"),
-        (123456.78, "1/s", "123460 1/s"),
-        (1.5e-7, "Pa.s^0.45", "1.5e-7 Pa.s^0.45"),
-        (3.2e12, "1/s", "3.2e12 1/s"),
-        (317.4, "gpm", "317.4 gpm"),
-        (0.4567, "", "0.4567"),
+        (0.0123, "m", "mm"),
+        (1.25, "m", "m"),
+        (0.0, "m", "mm"),
+        (-2500.0, "Pa", "kPa"),
+        (123456.0, "Pa/m", "kPa/m"),
+        (1e-9, "m^3/s", "mL/min"),
+        (0.005, "m^3/s", "L/min"),
+        (0.5, "m^3/s", "m^3/h"),
     ],
 )
-def test_show(value, unit, shown):
-    assert units.show(value, unit) == shown
+def test_suiting_unit(value, unit, chosen):
+    assert units.suiting(value, unit) == chosen
 
 
-def test_convert_names_the_place_of_an_unknown_unit():
+def test_scale_names_the_place_of_an_unknown_unit():
     with pytest.raises(CaseError, match=r"^\[report\] length: unknown unit 'inn'; did you mean in"):
-        units.convert(1.0, "inn", "length", where="[report] length")
+        units.scale("inn", "length", where="[report] length")
     with pytest.raises(CaseError, match="'gpm' is not a unit of length but of volume flow"):
         units.scale("gpm", "length")
 
