@@ -31,7 +31,7 @@ def cli() -> None:
 
 @cli.command()
 @click.argument("case", type=click.Path(path_type=Path))
-@click.option("--out", type=click.Path(path_type=Path), metavar="FOLDER", help="Write result files there.")
+@click.option("--out", metavar="FOLDER", help="Write result files there.")
 @click.option("--accuracy", metavar="SHARE", help='Half-width asked of the bracket, e.g. "0.1 %" or 0.001.')
 @click.option("--no-pictures", is_flag=True, help="Leave the pictures out, which is faster.")
 @click.option(
@@ -48,7 +48,7 @@ def cli() -> None:
     help="Stop refining beyond so many triangles, to give up sooner or later than usual.",
 )
 def solve(
-    case: Path, out: Path | None, accuracy: str | None, no_pictures: bool, method: str, triangles: int | None
+    case: Path, out: str | None, accuracy: str | None, no_pictures: bool, method: str, triangles: int | None
 ) -> int:
     """Solve the case file CASE: flow rate from pressure gradient, or the reverse.
 
@@ -63,16 +63,18 @@ def solve(
     from ductsolve.app import folder, job, summary, terminal
     from ductsolve.app.writing import file_names, files_block, write_files
 
+    if out is not None and not out.strip():
+        raise click.UsageError("--out is empty; name the folder to write to")
     pictures = not no_pictures
-    with folder.staged(out, file_names(pictures)) if out else nullcontext() as stage:
+    with folder.staged(Path(out), file_names(pictures)) if out else nullcontext() as stage:
         with terminal.progress_on(sys.stderr) as progress:
             outcome = job.run(case, accuracy, method, triangles, progress)
         if stage:
             write_files(outcome, stage, pictures)
-    if not sys.stdout.isatty():  # the text on the terminal has them too
+    if sys.stdout is None or not sys.stdout.isatty():  # the text on the terminal has them too
         for warning in summary.warning_block(outcome).notes:
             _say(f"ductsolve: {warning}", err=True)
-    _say(terminal.report_of(outcome, files_block(out, pictures) if out else None))
+    _say(terminal.report_of(outcome, files_block(Path(out), pictures) if out else None))
     return SUCCESS if outcome.settled else FELL_SHORT
 
 
@@ -94,6 +96,8 @@ def main(argv: Sequence[str] | None = None) -> int:
     except BrokenPipeError:  # whoever read the output has gone
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return SUCCESS
+    except OSError as error:  # the output is full or closed
+        return _refuse(f"the text could not be printed ({error.strerror})")
 
 
 def _refuse(message: str) -> int:
@@ -103,5 +107,8 @@ def _refuse(message: str) -> int:
 
 def _say(text: str, err: bool = False) -> None:
     """Print, with a question mark for what the terminal's encoding lacks."""
-    encoding = (sys.stderr if err else sys.stdout).encoding or "utf-8"
+    stream = sys.stderr if err else sys.stdout
+    if stream is None:  # closed by whoever started the command
+        return
+    encoding = stream.encoding or "utf-8"
     click.echo(text.encode(encoding, "replace").decode(encoding), err=err)

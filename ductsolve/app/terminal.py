@@ -62,7 +62,7 @@ def _line(row: Row, label: int, cell: int, indent: str = "") -> str:
 @contextmanager
 def progress_on(stream: TextIO) -> Iterator[Progress | None]:
     """Progress on a terminal, erased in the end; None where the stream is not one."""
-    if not stream.isatty():
+    if stream is None or not stream.isatty():
         yield None
         return
     progress = Progress(stream)

@@ -267,3 +267,20 @@ def test_a_reader_that_leaves(tmp_path):
     command = f'"{sys.executable}" -m ductsolve solve "{case}" | head -c 1'
     result = subprocess.run(command, shell=True, capture_output=True, text=True)
     assert result.stderr == ""
+
+
+def test_an_empty_out_is_refused(capsys, tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    case = Path(__file__).parents[2] / "geometries" / "concentric_annulus.toml"
+    assert main(["solve", str(case), "--out", ""]) == 2
+    assert "--out is empty" in capsys.readouterr().err
+    assert not list(tmp_path.iterdir())
+
+
+@pytest.mark.parametrize("closed", [">&-", "2>&-"])
+def test_closed_output_is_no_crash(closed):
+    case = Path(__file__).parents[2] / "geometries" / "concentric_annulus.toml"
+    line = f'"{sys.executable}" -m ductsolve solve "{case}" {closed}'
+    done = subprocess.run(["sh", "-c", line], capture_output=True, text=True)
+    assert done.returncode == 0
+    assert "Traceback" not in done.stderr
