@@ -130,13 +130,14 @@ class Velocity:
 def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, stop: float) -> Velocity:
     """Velocity that best belongs to the stress, by steps in the stress at the quadrature points.
 
-    A velocity is worth G int w - int F(|grad w|), its lower bound on the potential. Ends at the second
-    step that adds at most ``stop`` times the best worth, or when ``PATIENCE`` steps found nothing of worth;
-    returns the best velocity met.
+    A velocity is worth G int w - int F(|grad w|), its lower bound on the potential. Ends at the first step
+    (the second with a yield stress) that adds at most ``stop`` times the best worth, or when ``PATIENCE``
+    steps found nothing of worth; returns the best velocity met.
     """
     elements, system = level.elements, level.velocity_system
     stress = gradient * level.stress(psi)
     best, most, idle, solve = np.zeros((elements.count, 6)), 0.0, 0, None
+    patience = 2 if capped.fluid.yield_stress else 1  # plugs make the worth of steps erratic
     for step in range(1, MOST_STEPS + 1):  # noqa: B007
         magnitude = size(stress)
         secant, tangent = capped.linearised(magnitude)
@@ -152,7 +153,7 @@ def relax_velocity(level: Level, capped: Capped, gradient: float, psi: Array, st
         idle += worth - most <= stop * most
         if worth > most:
             best, most = share * velocity, worth
-        if idle == (2 if most > 0 else PATIENCE) or not np.isfinite(worth):
+        if idle == (patience if most > 0 else PATIENCE) or not np.isfinite(worth):
             break
         moved = _applied(viscosity, rate - secant * stress)
 
