@@ -35,7 +35,8 @@ from ductsolve import Status
 ACCURACIES = (1e-2, 1e-3, 1e-4)
 REFERENCE_ACCURACY = 1e-5
 KNOWN = 1 / 3  # of the accuracy asked: a wider bracket on the truth does not tell true errors
-LEAST_ERROR = 1e-5  # smaller true errors are not told apart
+LEAST_ERROR = 1e-6  # the library's meshes are not refined beyond
+TELLING = 2.0  # times the doubt in the truth: smaller true errors are not told apart
 TOO_LONG = 1.0  # seconds: finer accuracies of a case are then not tried
 LONGEST_LIBRARY_RUN = 0.6  # seconds: finer meshes are then not tried
 SLOW_LIBRARY_RUN = 0.2  # seconds: fewer settings are then tried
@@ -195,7 +196,7 @@ def compare(problem: Problem):
         known = within <= KNOWN * accuracy
         same, same_plain = None, math.inf
         if known:
-            reached_error = max(error, LEAST_ERROR)
+            reached_error = max(error, TELLING * within)
             same, same_plain = tuned_best(opponents, reached_error), plain_best(opponents, reached_error)
         times = [best.seconds if best else math.inf, plain, same.seconds if same else math.inf, same_plain]
         columns = [cell for t in times for cell in _time_and_ratio(t, seconds)]
