@@ -6,11 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ductsolve.mesh.triangles import SIDES, Mesh, edge_points
+from ductsolve.mesh.triangles import SAME_PLACE, SIDES, Mesh, edge_points
 from ductsolve.solver.flow import DuctFlow
 from ductsolve.solver.quadratic import corner_rule
 
-SAME_PLACE = 1e-9  # of the section's size
 MOST_TRIANGLES = 24_000  # more do not show in a picture of a page's width
 SIDE_SAMPLES = np.linspace(0, 1, 9)
 

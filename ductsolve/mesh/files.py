@@ -18,7 +18,7 @@ from ductsolve.errors import DuctsolveWarning, SectionError
 from ductsolve.mesh.conformity import check_mesh, place
 from ductsolve.mesh.loops import centroid, edge_areas, edge_lengths, outline_loops
 from ductsolve.mesh.sections import Section
-from ductsolve.mesh.triangles import Boundary, mesh_from_corners, signed_areas
+from ductsolve.mesh.triangles import SAME_PLACE, Boundary, mesh_from_corners, signed_areas
 
 READERS = {
     ".msh": meshio.gmsh.read,
@@ -31,8 +31,6 @@ READERS = {
 AREAS = {"triangle": (3, 3), "triangle6": (3, 6), "triangle7": (3, 7)}
 AREAS |= {"quad": (4, 4), "quad8": (4, 8), "quad9": (4, 9)}
 LINES = {"line": 2, "line3": 3}
-# Parts of the largest extent: points closer than this are one; z and symmetry lines may stray by this.
-SAME_PLACE = 1e-9
 
 
 def read_section(path: str | Path, unit: float = 1.0) -> Section:
@@ -40,7 +38,7 @@ def read_section(path: str | Path, unit: float = 1.0) -> Section:
 
     Parameters
     ----------
-    path : a Gmsh .msh, .vtu, .vtk or .xdmf file. Triangles and quadrilaterals, straight or with mid-side
+    path : a .msh (2 or 4), .vtu, .vtk or .xdmf file. Triangles and quadrilaterals, straight or with mid-side
         nodes (curved sides on the outline are kept, those inside are straightened), in the x-y plane.
     unit : metres per unit of the file's coordinates
 

@@ -12,10 +12,8 @@ from ductsolve.errors import SectionError
 from ductsolve.mesh.conformity import check_mesh, contacts, first_contact, place
 from ductsolve.mesh.loops import centroid, edge_areas, edge_lengths
 from ductsolve.mesh.sections import Section
-from ductsolve.mesh.triangles import Boundary, mesh_from_corners
+from ductsolve.mesh.triangles import SAME_PLACE, Boundary, mesh_from_corners
 
-# Parts of the largest extent: corners closer than this are one, an outline thinner than this has no area.
-SAME_PLACE = 1e-9
 # A side is Delaunay when the cotangents of the two angles opposite it do not add up to less than this.
 DELAUNAY = -1e-9
 # Spacing of inner points: what it grows by with the distance from the outline, and how far from a point

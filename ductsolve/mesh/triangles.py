@@ -13,6 +13,8 @@ from ductsolve.mesh.curves import EllipseArc
 # Local node numbers along each side: start, end, middle. Side 0 is the one bisected first.
 SIDES = np.array([[0, 1, 3], [1, 2, 4], [2, 0, 5]])
 
+SAME_PLACE = 1e-9  # of a section's size: points closer are one, outlines thinner have no area
+
 Curve = EllipseArc | None
 
 

@@ -8,10 +8,8 @@ from scipy.sparse.csgraph import connected_components
 from scipy.spatial import cKDTree
 
 from ductsolve.mesh.sections import Section
-from ductsolve.mesh.triangles import Mesh
+from ductsolve.mesh.triangles import SAME_PLACE, Mesh
 from ductsolve.solver.fields import Level
-
-SAME_PLACE = 1e-9  # of the section's size: copies of one node on a symmetry line
 
 # Local node order of a mirrored triangle, counter-clockwise again.
 MIRRORED = np.array([1, 0, 2, 3, 5, 4])
